@@ -1,0 +1,24 @@
+#!/usr/bin/env bash
+# Sets up, builds and runs all tests.
+#   bash tests/run.sh [--yes] [--accuracy] [ctest arguments...]
+#   --accuracy   print the accuracy tables from the full sets of rendered frames instead of running the tests
+set -euo pipefail
+top=$(cd "$(dirname "${BASH_SOURCE[0]}")/.." && pwd)
+yes=0 accuracy=0
+while [ $# -gt 0 ]; do
+  case "$1" in
+    --yes) yes=1; shift;;
+    --accuracy) accuracy=1; shift;;
+    *) break;;
+  esac
+done
+# shellcheck source=src/setup.sh
+. "$top/src/setup.sh"
+install_packages "$yes" "$top/src/packages.txt" "$top/tests/packages.txt"
+build=$top/build-tests
+cmake -S "$top" -B "$build" -G Ninja -DCMAKE_BUILD_TYPE=Release -DFOCUSFALL_TESTS=ON >/dev/null
+cmake --build "$build"
+if [ "$accuracy" = 1 ]; then
+  exec "$build/tests/accuracy" "$@"
+fi
+exec ctest --test-dir "$build" --output-on-failure --no-tests=error -j "$(nproc)" "$@"
