@@ -5,14 +5,24 @@
 #pragma once
 
 #include <cstddef>
+#include <cstdint>
+#include <memory>
 #include <opencv2/core.hpp>
 #include <span>
 #include <string>
 #include <tl/expected.hpp>
 
+#include "analysis/measure/pixel_strips.h"
+
 namespace focusfall {
 
+// Largest picture that is decoded, pixels: four times the largest camera frames of today (judgement). A file that
+// declares more is refused before any memory is taken for it.
+inline constexpr std::int64_t kMaxPicturePixels = 400'000'000;
+
 // Why a file could not be decoded: what was seen and what was expected, without the path.
+// Codes: file-empty, not-a-picture, picture-empty (no pixels), picture-too-large, picture-unsupported,
+// picture-truncated (ends early), picture-damaged (its data contradict themselves).
 struct DecodeError {
   std::string code;
   std::string message;
@@ -27,35 +37,51 @@ struct PictureFormat {
   int bits = 8;                 // per channel as delivered: 8 or 16
   int channels = 3;             // 1 or 3
   std::string kind;             // "JPEG", "TIFF", ...
+  int remarks = 0;              // oddities that the codec reported and that did not touch the pixels
 };
 
-// Planes of a JPEG strip as coded: luma at full size, chroma as sampled. A grey picture has empty cb and cr.
-// The codes are full-range YCbCr after JFIF (ITU-T T.871).
-struct YccStrip {
-  int first_row = 0;
-  cv::Mat y;                    // CV_8UC1, rows x width
-  cv::Mat cb, cr;               // CV_8UC1, subsampled
-  int chroma_step_x = 1, chroma_step_y = 1;
-};
-
-// Interleaved strip of any other format: CV_8UC3 or CV_16UC3 in the order R, G, B, or one channel.
-struct RgbStrip {
-  int first_row = 0;
-  cv::Mat rgb;
-};
-
+// What receives a picture. start() comes once, before the first strip; the strips follow from top to bottom without
+// gaps, all of one type. The planes are only borrowed: they hold until take() returns.
 class StripSink {
  public:
   virtual ~StripSink() = default;
   virtual void start(const PictureFormat& format) = 0;
   virtual void take(const YccStrip& strip) = 0;
   virtual void take(const RgbStrip& strip) = 0;
+
+  // A place for the luma of a YCbCr picture, so that the codec can write it there and nobody need copy it: CV_8UC1 of
+  // at least this padded size. Asked once, after start(); strip.y then refers to its rows. Empty: no such place.
+  virtual cv::Mat luma_destination(int padded_width, int padded_height) {
+    static_cast<void>(padded_width);
+    static_cast<void>(padded_height);
+    return {};
+  }
 };
 
-// Chooses the decoder by content. A picture cut short is delivered as far as it goes and then reported as an error.
+class JpegDecoder;
+
+// What one worker keeps between frames: codec state and buffers. Not for two threads at once.
+class DecodeWorkspace {
+ public:
+  DecodeWorkspace();
+  ~DecodeWorkspace();
+  DecodeWorkspace(DecodeWorkspace&&) noexcept;
+  DecodeWorkspace& operator=(DecodeWorkspace&&) noexcept;
+
+  JpegDecoder& jpeg();          // made on first use
+  cv::Mat strip;                // for any codec: cv::Mat::create keeps the memory where size and type are the same
+
+ private:
+  std::unique_ptr<JpegDecoder> jpeg_;
+};
+
+// Chooses the decoder by content. A picture cut short is delivered as far as whole strips go and then reported as an
+// error; so is a damaged one. Exceptions of the sink pass through.
+Decoded<PictureFormat> decode_picture(std::span<const std::byte> file, StripSink& sink, DecodeWorkspace& workspace);
 Decoded<PictureFormat> decode_picture(std::span<const std::byte> file, StripSink& sink);
 
-// Reads the size without decoding.
+// Reads the size without decoding; refuses what decode_picture would refuse unseen (too large, no pixels, no picture).
+Decoded<PictureFormat> picture_format(std::span<const std::byte> file, DecodeWorkspace& workspace);
 Decoded<PictureFormat> picture_format(std::span<const std::byte> file);
 
 }  // namespace focusfall
