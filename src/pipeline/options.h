@@ -3,7 +3,9 @@
 #pragma once
 
 #include <optional>
+#include <span>
 #include <string>
+#include <string_view>
 #include <tl/expected.hpp>
 
 #include "analysis/measure/measurement.h"
@@ -87,7 +89,20 @@ Parsed<UserAim> parse_aim(const std::string& text);              // x,y,width,he
 Parsed<NearSide> parse_near_side(const std::string& text);       // bottom, top, left, right
 Parsed<DistanceOrigin> parse_distance_origin(const std::string& text);  // sensor, lens
 
-// "0.02mm", "20um" or "3px" into the one field of `values` that it names.
-Parsed<UserValues> with_acceptable_blur(UserValues values, const std::string& text);
+// Sets the one field of `values` that "0.02mm", "20um" or "3px" names.
+tl::expected<void, std::string> set_acceptable_blur(UserValues& values, const std::string& text);
+
+// One thing a person may say: --focal-length on the command line, focal_length in the settings.
+struct ValueOption {
+  enum class Group { shot, picture, blur, motion, place };
+  std::string_view name;          // "focal-length"
+  std::string_view placeholder;   // "MM", shown in the help
+  std::string_view help;          // with the unit and the default
+  Group group = Group::shot;
+  tl::expected<void, std::string> (*set)(UserValues&, const std::string&) = nullptr;
+};
+
+// All of them, in the order of the help. A switch such as `trust_centre` is no value and not in the table.
+std::span<const ValueOption> value_options();
 
 }  // namespace focusfall

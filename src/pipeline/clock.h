@@ -1,0 +1,13 @@
+// Times as ISO 8601 text, as the capture data carries them.
+#pragma once
+
+#include <optional>
+#include <string>
+
+namespace focusfall {
+
+// "2024-05-01T18:03:07.25+02:00" moved by `seconds`; fraction digits and zone are kept as they stand, and a fraction
+// of the offset is dropped below the digits that the time has. Absent where the text is no such time.
+std::optional<std::string> moved_time(const std::string& iso_time, double seconds);
+
+}  // namespace focusfall
