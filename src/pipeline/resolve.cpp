@@ -252,7 +252,7 @@ void choose_aim(Resolved& resolved, const Layers& layers, DecodedSize size, int 
     if (!box) {
       if (candidate.kind == FocusAreaKind::user) {
         resolved.issues.push_back({.stage = Stage::resolve,
-                                   .code = "aim_outside_frame",
+                                   .code = "aim-outside-frame",
                                    .message = "The aim that was given lies outside this frame and was not used."});
       }
       continue;
@@ -276,7 +276,7 @@ void choose_near_side(Resolved& resolved, const Layers& layers) {
   } else {
     resolved.issues.push_back(
         {.stage = Stage::resolve,
-         .code = "orientation_unknown",
+         .code = "orientation-unknown",
          .message = "The file does not say which way up it was taken; all four sides are tried as the near one. "
                     "--near-side says it."});
   }
@@ -288,7 +288,7 @@ void choose_contact(Resolved& resolved, const Layers& layers, DecodedSize size, 
   const double y = fraction_of(*row, displayed_size(size, orientation).height_px);
   if (y > 1) {
     resolved.issues.push_back({.stage = Stage::resolve,
-                               .code = "contact_outside_frame",
+                               .code = "contact-outside-frame",
                                .message = "The contact row that was given lies outside this frame and was not used."});
     return;
   }
@@ -376,7 +376,7 @@ Resolved resolve(const Capture& capture, const UserValues& user, const Settings&
   if (!resolved.setup) {
     resolved.issues.push_back(
         {.stage = Stage::resolve,
-         .code = "setup_incomplete",
+         .code = "setup-incomplete",
          .message = fmt::format("{} not known; nothing can be predicted. {}",
                                 !resolved.capture.focal_length_mm && !resolved.capture.f_number
                                     ? "Focal length and f-number are"
