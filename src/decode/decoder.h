@@ -8,9 +8,11 @@
 #include <cstdint>
 #include <memory>
 #include <opencv2/core.hpp>
+#include <optional>
 #include <span>
 #include <string>
 #include <tl/expected.hpp>
+#include <vector>
 
 #include "analysis/measure/pixel_strips.h"
 
@@ -31,6 +33,32 @@ struct DecodeError {
 template <class T>
 using Decoded = tl::expected<T, DecodeError>;
 
+// Something about a decoded picture that whoever reads its numbers should know. Codes: alpha-dropped, more-pictures,
+// profile-unusable, profile-of-tables, gamma-stated, transfer-stated, orientation-from-container, crop-ignored,
+// preview-small, preview-only, raw-damaged, raw-unknown-body.
+struct DecodeNote {
+  std::string code;
+  std::string message;          // one sentence
+};
+
+// Where the pixels of a frame came from: a raw file holds no picture of its own.
+enum class MeasuredFrom { picture, embedded_preview, half_size_development };
+// What linearises the codes.
+enum class Transfer { srgb_assumed, profile };
+
+constexpr const char* measured_from_name(MeasuredFrom from) {
+  switch (from) {
+    case MeasuredFrom::picture: return "picture";
+    case MeasuredFrom::embedded_preview: return "embedded preview";
+    case MeasuredFrom::half_size_development: return "half-size development";
+  }
+  return "picture";
+}
+constexpr const char* transfer_name(Transfer transfer) {
+  return transfer == Transfer::profile ? "profile" : "sRGB assumed";
+}
+
+// Everything but `remarks`, and notes about damage, is complete when StripSink::start() gets it.
 struct PictureFormat {
   int width_px = 0;
   int height_px = 0;
@@ -38,6 +66,11 @@ struct PictureFormat {
   int channels = 3;             // 1 or 3
   std::string kind;             // "JPEG", "TIFF", ...
   int remarks = 0;              // oddities that the codec reported and that did not touch the pixels
+  MeasuredFrom measured_from = MeasuredFrom::picture;
+  Transfer transfer = Transfer::srgb_assumed;
+  std::vector<float> linear_of_code;     // for LumaPicture, 256 or 65536 entries; empty: the sRGB curve
+  std::optional<int> orientation;        // Exif 1..8 where the container states it and overrules Exif (HEIF)
+  std::vector<DecodeNote> notes;
 };
 
 // What receives a picture. start() comes once, before the first strip; the strips follow from top to bottom without
