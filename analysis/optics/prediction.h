@@ -9,6 +9,10 @@ namespace focusfall {
 
 enum class DistanceOrigin { sensor, lens };
 
+// What counts as too much blur where the user has not said it: two pixels of the delivered picture (`check`, `cull`,
+// `lens`), or the circle of confusion, diagonal / 1500 (`predict`, and wherever there is no picture).
+enum class AcceptableBlurRule { delivered_picture, circle_of_confusion };
+
 // What the model is told. Complete enough to predict: focal length and f-number are there; what else is known
 // decides how far the prediction reaches, field by field.
 struct OpticalSetup {
@@ -33,6 +37,7 @@ struct OpticalSetup {
   double wavelength_um = 0.55;                      // green, the peak of the eye's daylight response
   std::optional<double> acceptable_blur_um;         // as the user gave it
   std::optional<double> acceptable_blur_px;
+  AcceptableBlurRule acceptable_blur_rule = AcceptableBlurRule::delivered_picture;
   int delivered_width_px = 0;                       // 0: the frame's width, at most 4000 px
 };
 
@@ -50,6 +55,8 @@ struct Prediction {
   std::optional<double> near_limit_m;
   std::optional<double> far_limit_m;                // absent when infinite
   bool far_limit_infinite = false;
+  std::optional<Interval> near_limit_bounds_m;      // not in the record: the limits with the focus distance at the
+  std::optional<Interval> far_limit_bounds_m;       //   ends of its interval; high, or all, may be infinite
   std::optional<double> depth_of_focus_um;          // total: both sides
   std::optional<double> airy_diameter_px;
   std::optional<double> motion_blur_px;
