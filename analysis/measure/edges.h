@@ -1,13 +1,11 @@
 // Finds edges in a picture and fits the width of each: edge-spread fits on an image pyramid.
 //
 // An edge is kept with the squared disc S (px^2 of level 0) that would blur an ideal step as much as this one was;
-// the fitted Gaussian width is turned into S through edge_tables.h, which runs this very code on drawn edges.
+// the fitted Gaussian width is turned into S through edge_tables.h, which runs this very fit on drawn edges.
 #pragma once
 
-#include <span>
 #include <vector>
 
-#include "analysis/measure/luma_picture.h"
 #include "analysis/measure/measurement.h"
 #include "analysis/measure/pyramid.h"
 
@@ -21,12 +19,14 @@ struct EdgeSearchOptions {
 
 // Reused from call to call; holds no state that a result depends on.
 struct EdgeSearchBuffers {
-  std::vector<float> smooth, slope, gradient_x, gradient_y;
-  std::vector<float> linear;
+  std::vector<float> linear;                    // rows of the panel, linearised
+  std::vector<float> smooth_x, slope_x;         // filtered along the rows
+  std::vector<float> gradient_x, gradient_y;    // of the panel's own rows and one more on each side
 };
 
-// Appends to `edges` the edges whose position lies in `region` (level-0 px). `noise_codes` is the noise of the picture
-// in 8-bit codes (noise.h). Deterministic: the same picture and region give the same edges in the same order.
+// Appends to `edges` those whose position lies in `region` (level-0 px). The pyramid must cover the region.
+// `noise_codes` is the noise of the picture in 8-bit codes (noise.h). Deterministic: the same picture and region give
+// the same edges in the same order.
 void find_edges(const Pyramid& pyramid, PixelRect region, double noise_codes, const EdgeSearchOptions& options,
                 EdgeSearchBuffers& buffers, std::vector<EdgeSample>& edges);
 

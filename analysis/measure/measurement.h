@@ -16,6 +16,7 @@ struct EdgeSample {
   float squared_disc_px2 = 0;    // S in level-0 px^2, before any baseline is taken off
   float amplitude = 0;           // step height, linear light
   float residual = 0;            // rms of the fit / |amplitude|
+  float width_level_px = 0;      // fitted Gaussian sigma, px of the level it was fitted on
   std::uint8_t level = 0;        // pyramid level on which it was fitted
   bool saturated = false;        // wider than that level can tell: a lower bound
 };

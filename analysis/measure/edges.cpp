@@ -1,0 +1,341 @@
+#include "analysis/measure/edges.h"
+
+#include <algorithm>
+#include <array>
+#include <cmath>
+#include <cstdint>
+
+#include "analysis/measure/edge_fit.h"
+#include "analysis/measure/edge_tables.h"
+
+namespace focusfall {
+namespace {
+
+constexpr int kBlock = 32;               // px of a level: the grid on which edges are rationed
+constexpr int kPanelWidth = 480;         // px: the working set of a panel stays in the second-level cache
+constexpr int kGradientReach = 3;        // px on either side of the 7-tap filters
+constexpr float kLeastGradient = 8.0f;   // in standard deviations of its noise (measured: 1 false edge in 10^9)
+constexpr float kBrightestNear = 0.965f, kDarkestNear = 0.0009f;   // linear; beyond, clipping has eaten the profile
+constexpr float kMostOffset = 1.35f;     // px between the gradient's crest and the fitted edge
+constexpr float kMostResidual = 0.06f, kMostResidualSaturated = 0.12f;   // rms / amplitude
+constexpr float kLeastContrast = 10.0f;  // amplitude in standard deviations of the noise
+constexpr float kSaturatedSigma = 2.65f; // level px: wider, the 8 px window no longer holds the edge
+constexpr float kSharpestSigma = 0.45f;  // level-0 px: sharper than any optics, a hot pixel or a drawn line
+constexpr float kNoisePerLevel = 0.4f;   // of the noise survives each halving; .31 if it were white, more after demosaicing
+
+// Derivative of a Gaussian and the Gaussian, standard deviation 1, 7 taps.
+struct GradientKernel {
+  std::array<float, 7> smooth{}, slope{};
+  float noise_gain = 0;   // standard deviation of the gradient for unit white noise
+  GradientKernel() {
+    double sum = 0, moment = 0;
+    for (int i = -3; i <= 3; ++i) sum += std::exp(-0.5 * i * i);
+    for (int i = -3; i <= 3; ++i) moment += i * i * std::exp(-0.5 * i * i);
+    double s2 = 0, d2 = 0;
+    for (int i = -3; i <= 3; ++i) {
+      const double s = std::exp(-0.5 * i * i) / sum, d = i * std::exp(-0.5 * i * i) / moment;
+      smooth[static_cast<std::size_t>(i + 3)] = static_cast<float>(s);
+      slope[static_cast<std::size_t>(i + 3)] = static_cast<float>(d);
+      s2 += s * s;
+      d2 += d * d;
+    }
+    noise_gain = static_cast<float>(std::sqrt(s2 * d2));
+  }
+};
+
+const GradientKernel& kernel() {
+  static const GradientKernel instance;
+  return instance;
+}
+
+// Noise in linear light at linear value v, for `noise` 8-bit codes of it: the slope of the sRGB curve.
+float linear_noise(float v, float noise) {
+  return noise * (2.275f / 255.0f) * std::pow(std::max(v, 0.0031f), 0.5833f);
+}
+
+// Noise against value, tabulated: the power is too slow for every crest.
+class NoiseCurve {
+ public:
+  explicit NoiseCurve(float noise) {
+    for (std::size_t i = 0; i <= kEntries; ++i) {
+      sigma_[i] = linear_noise(static_cast<float>(i) / kEntries, noise);
+    }
+  }
+  float at(float v) const {
+    return sigma_[static_cast<std::size_t>(std::clamp(v, 0.0f, 1.0f) * kEntries + 0.5f)];
+  }
+
+ private:
+  static constexpr std::size_t kEntries = 1024;
+  std::array<float, kEntries + 1> sigma_{};
+};
+
+// A hash of place and level, .5..1: edges are rationed by signal to noise times this, because taking the strongest
+// alone would favour the sharpest.
+float lottery(int x, int y, int level) {
+  std::uint32_t h = static_cast<std::uint32_t>(x) * 0x9E3779B1u ^ static_cast<std::uint32_t>(y) * 0x85EBCA77u ^
+                    static_cast<std::uint32_t>(level) * 0xC2B2AE3Du;
+  h ^= h >> 15;
+  h *= 0x2C1B3C6Du;
+  h ^= h >> 12;
+  return 0.5f + 0.5f * static_cast<float>(h & 0xFFFF) / 65535.0f;
+}
+
+void filter_row(const float* __restrict in, int width, float* __restrict smooth, float* __restrict slope) {
+  const auto& k = kernel();
+  const float s0 = k.smooth[3], s1 = k.smooth[4], s2 = k.smooth[5], s3 = k.smooth[6];
+  const float d1 = k.slope[4], d2 = k.slope[5], d3 = k.slope[6];
+  for (int i = 0; i < width; ++i) {
+    const float* a = in + i + 3;
+    smooth[i] = s0 * a[0] + s1 * (a[-1] + a[1]) + s2 * (a[-2] + a[2]) + s3 * (a[-3] + a[3]);
+    slope[i] = d1 * (a[1] - a[-1]) + d2 * (a[2] - a[-2]) + d3 * (a[3] - a[-3]);
+  }
+}
+
+// Combines seven filtered rows, `stride` apart and centred on `smooth`/`slope`, into one row of the gradient.
+void gradient_row(const float* __restrict smooth, const float* __restrict slope, int stride, int width,
+                  float* __restrict gx, float* __restrict gy) {
+  const auto& k = kernel();
+  const float s0 = k.smooth[3], s1 = k.smooth[4], s2 = k.smooth[5], s3 = k.smooth[6];
+  const float d1 = k.slope[4], d2 = k.slope[5], d3 = k.slope[6];
+  for (int i = 0; i < width; ++i) {
+    const float* a = smooth + i;
+    const float* b = slope + i;
+    gx[i] = s0 * b[0] + s1 * (b[-stride] + b[stride]) + s2 * (b[-2 * stride] + b[2 * stride]) +
+            s3 * (b[-3 * stride] + b[3 * stride]);
+    gy[i] = d1 * (a[stride] - a[-stride]) + d2 * (a[2 * stride] - a[-2 * stride]) +
+            d3 * (a[3 * stride] - a[-3 * stride]);
+  }
+}
+
+float largest_square(const float* __restrict gx, const float* __restrict gy, int n) {
+  float largest = 0;
+  for (int i = 0; i < n; ++i) {
+    const float m = gx[i] * gx[i] + gy[i] * gy[i];
+    largest = m > largest ? m : largest;
+  }
+  return largest;
+}
+
+struct Crest {
+  float x, y, nx, ny;   // level px; unit normal towards the bright side
+  float rank;
+};
+
+// The part of a level that one pass looks at: whole pixels of the level's own region.
+struct LevelWindow {
+  int level;
+  int width, height;         // of the level
+  int x0, y0, x1, y1;        // search window, already clear of the border
+};
+
+// Linear values of a level at whole coordinates, level 0 through the curve.
+struct LinearPixels {
+  const float* values;
+  std::size_t stride;
+  float operator()(int x, int y) const { return values[static_cast<std::size_t>(y) * stride + x]; }
+};
+template <class Code>
+struct CodedPixels {
+  const Code* codes;
+  std::size_t stride;
+  const float* curve;
+  float operator()(int x, int y) const { return curve[codes[static_cast<std::size_t>(y) * stride + x]]; }
+};
+
+template <class Pixels>
+class LevelSearch {
+ public:
+  LevelSearch(const Pixels& pixels, const LevelWindow& window, float noise, const EdgeSearchOptions& options,
+              EdgeSearchBuffers& buffers)
+      : pixels_(pixels), window_(window), noise_(noise), options_(options), buffers_(buffers) {}
+
+  // Calls `found(crest, fit, ...)` for every edge that passes the gates, block by block.
+  template <class Found>
+  void run(const Found& found) {
+    for (int y = window_.y0; y < window_.y1; y += kBlock) {
+      const int rows = std::min(kBlock, window_.y1 - y);
+      for (int x = window_.x0; x < window_.x1; x += kPanelWidth) {
+        const int columns = std::min(kPanelWidth, window_.x1 - x);
+        fill_panel(x, y, columns, rows);
+        for (int bx = 0; bx < columns; bx += kBlock) {
+          search_block(bx, std::min(kBlock, columns - bx), rows);
+          for (std::size_t i = 0; i < crests_.size(); ++i) fit_crest(crests_[i], found);
+        }
+      }
+    }
+  }
+
+ private:
+  // Gradient of the panel and one pixel around it.
+  void fill_panel(int x0, int y0, int columns, int rows) {
+    panel_x_ = x0;
+    panel_y_ = y0;
+    const int width = columns + 2;                        // gradient columns
+    const int loaded = width + 2 * kGradientReach;        // pixels a row
+    const int source_rows = rows + 2 + 2 * kGradientReach;
+    stride_ = width;
+    buffers_.linear.resize(static_cast<std::size_t>(loaded));
+    buffers_.smooth_x.resize(static_cast<std::size_t>(width) * source_rows);
+    buffers_.slope_x.resize(buffers_.smooth_x.size());
+    buffers_.gradient_x.resize(static_cast<std::size_t>(width) * (rows + 2));
+    buffers_.gradient_y.resize(buffers_.gradient_x.size());
+    for (int r = 0; r < source_rows; ++r) {
+      const int y = y0 - 1 - kGradientReach + r;
+      const int x = x0 - 1 - kGradientReach;
+      for (int i = 0; i < loaded; ++i) buffers_.linear[static_cast<std::size_t>(i)] = pixels_(x + i, y);
+      filter_row(buffers_.linear.data(), width, buffers_.smooth_x.data() + r * stride_,
+                 buffers_.slope_x.data() + r * stride_);
+    }
+    for (int r = 0; r < rows + 2; ++r) {
+      gradient_row(buffers_.smooth_x.data() + (r + kGradientReach) * stride_,
+                   buffers_.slope_x.data() + (r + kGradientReach) * stride_, stride_, width,
+                   buffers_.gradient_x.data() + r * stride_, buffers_.gradient_y.data() + r * stride_);
+    }
+  }
+
+  // Crests of the gradient in one block of the panel, rationed.
+  void search_block(int bx, int columns, int rows) {
+    crests_.clear();
+    const float least = kLeastGradient * kernel().noise_gain;
+    const float floor2 = square(least * noise_.at(0.0f));
+    for (int r = 0; r < rows; ++r) {
+      const float* gx = buffers_.gradient_x.data() + (r + 1) * stride_ + bx + 1;
+      const float* gy = buffers_.gradient_y.data() + (r + 1) * stride_ + bx + 1;
+      if (largest_square(gx, gy, columns) < floor2) continue;
+      for (int i = 0; i < columns; ++i) {
+        const float m2 = gx[i] * gx[i] + gy[i] * gy[i];
+        if (m2 < floor2) continue;
+        consider(gx + i, gy + i, m2, panel_x_ + bx + i, panel_y_ + r, least);
+      }
+    }
+    ration();
+  }
+
+  // Keeps a pixel that is the crest of the gradient along its own direction.
+  void consider(const float* gx, const float* gy, float m2, int x, int y, float least) {
+    const float ax = std::abs(*gx), ay = std::abs(*gy);
+    // The two neighbours across the edge, interpolated between the straight and the diagonal one.
+    const bool along_x = ax >= ay;
+    const float f = along_x ? ay / ax : ax / ay;
+    const int sx = *gx >= 0 ? 1 : -1, sy = *gy >= 0 ? 1 : -1;
+    const std::ptrdiff_t straight = along_x ? sx : sy * stride_;
+    const std::ptrdiff_t diagonal = sx + static_cast<std::ptrdiff_t>(sy) * stride_;
+    auto magnitude = [&](std::ptrdiff_t o) { return std::sqrt(gx[o] * gx[o] + gy[o] * gy[o]); };
+    const float m = std::sqrt(m2);
+    const float ahead = (1 - f) * magnitude(straight) + f * magnitude(diagonal);
+    if (ahead >= m) return;
+    const float behind = (1 - f) * magnitude(-straight) + f * magnitude(-diagonal);
+    if (behind > m) return;
+    const float sigma = noise_.at(pixels_(x, y));
+    if (m < least * sigma) return;
+
+    // Vertex of the parabola through the three magnitudes, in steps of the interpolated neighbour's distance.
+    const float curvature = ahead + behind - 2 * m;
+    const float vertex = curvature < 0 ? 0.5f * (behind - ahead) / curvature : 0.0f;
+    const float step = std::sqrt(1 + f * f);
+    const float nx = *gx / m, ny = *gy / m;
+    const float shift = std::clamp(vertex, -0.5f, 0.5f) * step;
+    crests_.push_back({static_cast<float>(x) + shift * nx, static_cast<float>(y) + shift * ny, nx, ny,
+                       m / sigma * lottery(x, y, window_.level)});
+  }
+
+  void ration() {
+    const auto most = static_cast<std::size_t>(options_.edges_per_block);
+    if (crests_.size() <= most) return;
+    std::partial_sort(crests_.begin(), crests_.begin() + static_cast<std::ptrdiff_t>(most), crests_.end(),
+                      [](const Crest& a, const Crest& b) { return a.rank > b.rank; });
+    crests_.resize(most);
+  }
+
+  template <class Found>
+  void fit_crest(const Crest& crest, const Found& found) {
+    gather_profile(pixels_, crest.x, crest.y, crest.nx, crest.ny, profile_);
+    if (profile_.highest > kBrightestNear || profile_.lowest < kDarkestNear) return;
+    const auto fit = fit_profile(profile_);
+    if (!fit || fit->amplitude <= 0 || std::abs(fit->offset_px) > kMostOffset) return;
+    const bool saturated = fit->sigma_px > kSaturatedSigma;
+    if (fit->residual > (saturated ? kMostResidualSaturated : kMostResidual)) return;
+    const float middle = fit->base + 0.5f * fit->amplitude;
+    if (fit->amplitude < kLeastContrast * noise_.at(middle)) return;
+    if (window_.level == 0 && fit->sigma_px < kSharpestSigma) return;
+    found(crest, *fit, saturated);
+  }
+
+  static float square(float v) { return v * v; }
+
+  const Pixels& pixels_;
+  const LevelWindow window_;
+  const NoiseCurve noise_;
+  const EdgeSearchOptions& options_;
+  EdgeSearchBuffers& buffers_;
+  std::vector<Crest> crests_;
+  EdgeProfile profile_;
+  int panel_x_ = 0, panel_y_ = 0, stride_ = 0;
+};
+
+// The search window of one level for a region of level 0: inside the pyramid, clear of its border.
+LevelWindow level_window(const Pyramid& pyramid, PixelRect region, int level) {
+  const int width = pyramid.width(level), height = pyramid.height(level);
+  const int border = kProfileReach + 1;
+  const int x = region.x - pyramid.region.x, y = region.y - pyramid.region.y;
+  auto up = [level](int v) { return (v + (1 << level) - 1) >> level; };
+  return {level,
+          width,
+          height,
+          std::max(x >> level, border),
+          std::max(y >> level, border),
+          std::min(up(x + region.width), width - border),
+          std::min(up(y + region.height), height - border)};
+}
+
+template <class Pixels>
+void search_level(const Pixels& pixels, const Pyramid& pyramid, const LevelWindow& window, float noise,
+                  const EdgeSearchOptions& options, EdgeSearchBuffers& buffers, std::vector<EdgeSample>& edges) {
+  if (window.x0 >= window.x1 || window.y0 >= window.y1) return;
+  const float scale = static_cast<float>(1 << window.level);
+  const float centre = 0.5f * (scale - 1);
+  LevelSearch<Pixels>(pixels, window, noise, options, buffers)
+      .run([&](const Crest& crest, const EdgeFit& fit, bool saturated) {
+        EdgeSample edge;
+        const float x = crest.x + fit.offset_px * crest.nx, y = crest.y + fit.offset_px * crest.ny;
+        edge.x = x * scale + centre + static_cast<float>(pyramid.region.x);
+        edge.y = y * scale + centre + static_cast<float>(pyramid.region.y);
+        edge.normal_x = crest.nx;
+        edge.normal_y = crest.ny;
+        edge.squared_disc_px2 = squared_disc_of_width(window.level, fit.sigma_px);
+        edge.amplitude = fit.amplitude;
+        edge.residual = fit.residual;
+        edge.width_level_px = fit.sigma_px;
+        edge.level = static_cast<std::uint8_t>(window.level);
+        edge.saturated = saturated;
+        edges.push_back(edge);
+      });
+}
+
+}  // namespace
+
+void find_edges(const Pyramid& pyramid, PixelRect region, double noise_codes, const EdgeSearchOptions& options,
+                EdgeSearchBuffers& buffers, std::vector<EdgeSample>& edges) {
+  const cv::Mat& codes = pyramid.picture->codes;
+  const float* curve = pyramid.picture->linear_of_code.data();
+  for (int level = options.finest_level; level <= options.coarsest_level; ++level) {
+    const LevelWindow window = level_window(pyramid, region, level);
+    const float noise = static_cast<float>(noise_codes) * std::pow(kNoisePerLevel, static_cast<float>(level));
+    if (level > 0) {
+      const cv::Mat& values = pyramid.levels[static_cast<std::size_t>(level)];
+      if (values.empty()) break;
+      search_level(LinearPixels{values.ptr<float>(), values.step1()}, pyramid, window, noise, options, buffers, edges);
+    } else if (codes.depth() == CV_16U) {
+      const auto* first = codes.ptr<std::uint16_t>(pyramid.region.y) + pyramid.region.x;
+      search_level(CodedPixels<std::uint16_t>{first, codes.step1(), curve}, pyramid, window, noise, options, buffers,
+                   edges);
+    } else {
+      const auto* first = codes.ptr<std::uint8_t>(pyramid.region.y) + pyramid.region.x;
+      search_level(CodedPixels<std::uint8_t>{first, codes.step1(), curve}, pyramid, window, noise, options, buffers,
+                   edges);
+    }
+  }
+}
+
+}  // namespace focusfall
