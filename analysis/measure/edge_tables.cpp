@@ -142,7 +142,7 @@ WidthTable make_table(int level) {
     }
     const double variance = sum / kAngles.size();
     // The fit's ceiling flattens the end of the curve; only the rising part can be inverted.
-    if (!table.variance.empty() && variance < table.variance.back() + 0.02) break;
+    if (!table.variance.empty() && variance < table.variance.back() + 0.004) break;
     table.variance.push_back(variance);
     table.squared_disc.push_back(c * c);
   }

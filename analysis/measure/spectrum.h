@@ -1,19 +1,49 @@
-// Blur of a tile from its power spectrum: a power law times the transfer function of a disc.
+// Blur of a region from its power spectrum: a power law times the transfer function of a disc.
+//
+// The spectrum of most textures falls as f^-alpha (Field, "Relations between the statistics of natural images", 1987);
+// a disc of diameter c multiplies it by jinc^2(pi c f), whose fall and zeros give c. Edges are not needed, which makes
+// this the estimator for fine texture; a straight edge or a soft subject misleads it more than the edge fits.
 #pragma once
 
 #include <opencv2/core.hpp>
 #include <optional>
+#include <vector>
 
 namespace focusfall {
 
-// Linear light, CV_32FC1, square (side a power of two, 64..256).
 struct SpectralBlur {
-  double disc_px = 0;            // in px of the tile
-  double sigma_px = 0;
+  double disc_px = 0;            // px of the array given
+  double sigma_px = 0;           // half of the 16-84 % range of the posterior
+  double low_px = 0, high_px = 0;  // 95 %
+  int rings = 0;                 // of the spectrum that stood above the noise
 };
 
-// `system_variance_px2` = variance of what blurs beside the disc (pixel box, pyramid prefilter), px^2 of the tile.
-// Valid from 4 px up; nullopt where fewer than 5 rings rise above the noise or the answer is not sharp.
-std::optional<SpectralBlur> spectral_blur(const cv::Mat& linear_tile, double system_variance_px2);
+// Keeps its tables and buffers from call to call; one per thread.
+class SpectralEstimator {
+ public:
+  static constexpr int kTile = 128;      // px; least width and height of a region
+
+  // Mean spectrum of half-overlapping tiles of `linear` (CV_32FC1, linear light, at least kTile each way).
+  // `system_variance_px2`: variance of what blurs beside the disc (pixel box, pyramid filters), px^2 of the array.
+  // Valid from 4 px to about kTile / 5; nullopt where fewer than five rings stand above the noise or where the
+  // posterior is wide.
+  std::optional<SpectralBlur> measure(const cv::Mat& linear, double system_variance_px2);
+
+ private:
+  struct Ring {
+    double frequency = 0;        // mean, cycles/px
+    double bins = 0;             // independent samples in it, one tile
+    double low = 0, high = 0;    // cycles/px
+  };
+  void prepare(double system_variance_px2);
+  std::vector<double> ring_energies(const cv::Mat& linear, int& tiles);
+
+  double prepared_for_ = -1;
+  std::vector<Ring> rings_;
+  std::vector<int> ring_of_bin_;           // per bin of the half spectrum, -1 outside
+  std::vector<double> discs_;              // the grid of c
+  std::vector<std::vector<double>> log_response_;   // [disc][ring]
+  cv::Mat window_, tile_, spectrum_;
+};
 
 }  // namespace focusfall
