@@ -51,17 +51,41 @@ void clip_row(const std::vector<Side>& sides, double y, double distance, double&
 }  // namespace
 
 Canvas::Canvas(int samples, int channels, double scale, double origin_px)
-    : picture_(samples, samples, channels == 1 ? CV_32FC1 : CV_32FC3, cv::Scalar::all(0)),
-      scale_(scale),
-      origin_px_(origin_px) {}
+    : picture_(samples, samples, CV_32FC(channels), cv::Scalar::all(0)), scale_(scale), origin_px_(origin_px) {}
 
-void Canvas::clear(const Light& light) { picture_.setTo(cv::Scalar(light[0], light[1], light[2])); }
+Canvas::Canvas(cv::Size samples, int channels, double scale)
+    : picture_(samples, CV_32FC(channels), cv::Scalar::all(0)), scale_(scale), origin_px_(0) {}
+
+void Canvas::clear(const Light& light) { picture_.setTo(cv::Scalar(light[0], light[1], light[2], 1)); }
 
 void Canvas::blend(float* sample, float coverage, const Light& light, float factor) const {
-  for (int channel = 0; channel < picture_.channels(); ++channel) {
-    const float value = light[static_cast<std::size_t>(channel)] * factor;
+  const int channels = picture_.channels();
+  if (only_where_painted_) {
+    // Paint over what is there, without changing its outline.
+    coverage *= sample[3];
+    for (int channel = 0; channel < 3; ++channel) {
+      const float own = sample[3] > 0 ? sample[channel] / sample[3] : 0.0f;
+      sample[channel] += coverage * (light[static_cast<std::size_t>(channel)] * factor - own);
+    }
+    return;
+  }
+  for (int channel = 0; channel < channels; ++channel) {
+    const float value = channel == 3 ? 1.0f : light[static_cast<std::size_t>(channel)] * factor;
     sample[channel] += coverage * (value - sample[channel]);
   }
+}
+
+void Canvas::fill_limb(cv::Point2d from, double from_radius_px, cv::Point2d to, double to_radius_px,
+                       const Light& light, cv::Point2d shade) {
+  const cv::Point2d axis = to - from;
+  const double length = std::hypot(axis.x, axis.y);
+  fill_disc(from, from_radius_px, light);
+  fill_disc(to, to_radius_px, light);
+  if (length < 1e-9) return;
+  const cv::Point2d side(-axis.y / length, axis.x / length);
+  const std::array<cv::Point2d, 4> band{from + from_radius_px * side, to + to_radius_px * side,
+                                        to - to_radius_px * side, from - from_radius_px * side};
+  fill_convex(band, light, shade);
 }
 
 void Canvas::fill_convex(std::span<const cv::Point2d> corners_px, const Light& light, cv::Point2d shade) {
