@@ -12,7 +12,7 @@ namespace {
 
 constexpr double kLeastEffective = 3.6;      // measured: below, the median scatters beyond its interval
 constexpr double kLevelCeiling = 2.5;        // level px: weighted-median width above which a level is too fine
-constexpr double kResidualScale = 0.03;      // rms / amplitude at which an edge counts half
+constexpr double kResidualScale = 0.015;     // rms / amplitude at which an edge counts half
 constexpr double kStepsPerAcquaintance = 3;  // neighbouring edges share pixels: three count as one
 constexpr double kQuartilesToSigma = 1.35;   // of a normal distribution
 constexpr double kWiden = 1.25;              // measured: tails heavier than normal
