@@ -14,8 +14,7 @@ struct MeasureRequest {
   bool whole_frame = true;                   // false: only the aim (and its surroundings for motion) is measured
   bool near_side_known = true;               // false: no orientation recorded, all four sides are tried
   NearSide near_side = NearSide::bottom;     // which side of the *unrotated* frame shows the nearer ground
-  std::optional<double> contact_y;           // where the subject meets the ground: fraction along the near-far
-                                             // direction of the unrotated frame, from its top (or left) side
+  std::optional<double> contact_x, contact_y;   // where the subject meets the ground, as the user said; fractions
   bool keep_tiles = true;                    // fill Measurement::tiles
 };
 

@@ -11,9 +11,8 @@ namespace focusfall {
 namespace {
 
 constexpr double kLeastEffective = 3.6;      // measured: below, the median scatters beyond its interval
-constexpr double kLevelCeiling = 2.5;        // level px: weighted-median width above which a level is too fine
 constexpr double kResidualScale = 0.015;     // rms / amplitude at which an edge counts half
-constexpr double kStepsPerAcquaintance = 3;  // neighbouring edges share pixels: three count as one
+constexpr double kEdgesPerSample = 3;      // neighbouring edges share pixels: three count as one
 constexpr double kQuartilesToSigma = 1.35;   // of a normal distribution
 constexpr double kWiden = 1.25;              // measured: tails heavier than normal
 constexpr double kRelative = 0.06;           // of c: curvature of edges, tone curve
@@ -86,13 +85,13 @@ std::optional<EdgeBlur> level_blur(const std::vector<const EdgeSample*>& edges, 
   const double total = total_weight(discs);
   const double effective = total * total / square;
   if (effective < kLeastEffective) return std::nullopt;
-  saturated = weighted_quantile(widths, total, 0.5) >= kLevelCeiling;
+  saturated = weighted_quantile(widths, total, 0.5) >= kLevelCeilingPx;
 
   EdgeBlur blur;
   blur.squared_disc_px2 = weighted_quantile(discs, total, 0.5);
   const double spread =
       (weighted_quantile(discs, total, 0.75) - weighted_quantile(discs, total, 0.25)) / kQuartilesToSigma;
-  const double se_s = kWiden * spread / std::sqrt(std::max(effective / kStepsPerAcquaintance, 1.0));
+  const double se_s = kWiden * spread / std::sqrt(std::max(effective / kEdgesPerSample, 1.0));
   const double c = blur_disc_px(blur.squared_disc_px2);
   const double se_c = se_s / (2 * std::max(c, 1.0));   // dS = 2 c dc; below 1 px c itself has no meaning
   blur.sigma_px = std::sqrt(se_c * se_c + std::pow(kRelative * c, 2) + std::pow(kAbsolute_px, 2));

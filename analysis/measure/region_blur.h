@@ -8,6 +8,10 @@
 
 namespace focusfall {
 
+// Median width, px of its level, above which a level is too fine for the blur: the next coarser one is asked. The fit's
+// window ends at 8 px, which holds 2.4 standard deviations of an edge up to 2.9 px.
+inline constexpr double kLevelCeilingPx = 2.5;
+
 // Blur of a region from edges alone. sigma_px is the standard error of c = sqrt(max(S, 0)).
 struct EdgeBlur {
   double squared_disc_px2 = 0;

@@ -1,0 +1,211 @@
+#include "analysis/measure/measure_frame.h"
+
+#include <algorithm>
+#include <cmath>
+#include <vector>
+
+#include "analysis/measure/edges.h"
+#include "analysis/measure/motion.h"
+#include "analysis/measure/noise.h"
+#include "analysis/measure/pyramid.h"
+#include "analysis/measure/region_estimate.h"
+#include "analysis/measure/spectrum.h"
+
+namespace focusfall {
+namespace {
+
+constexpr int kAimEdgesPerBlock = 6;      // the aim is small: take what is there
+constexpr int kFineEdgesPerBlock = 2;     // of the whole frame on level 0, where most of the time goes
+constexpr int kCoarseEdgesPerBlock = 3;
+constexpr int kLeastAimEdges = 12;        // below, the aim has no evidence (measured)
+constexpr double kWidestInRegion = 0.2;   // c / side of the region: wider, soft shading passes for a blurred edge
+constexpr int kLeastBestEdges = 12;       // a tile with fewer is not called the sharpest
+constexpr int kBestRegionPx = 192;        // side of the sharpest region: the least that an aim has
+constexpr double kBackgroundClear = 0.25; // of the aim's size left out around it when the background is measured
+constexpr int kTilesAcross = 48;          // about; keeps the map readable and its tiles above 64 px
+constexpr int kLeastTilePx = 64, kMostTilePx = 128;
+constexpr int kCoarsest = Pyramid::kLevels - 1;
+
+PixelRect pixel_rect(const FractionBox& box, cv::Size size) {
+  const int x0 = std::clamp(static_cast<int>(std::lround(box.x * size.width)), 0, size.width);
+  const int y0 = std::clamp(static_cast<int>(std::lround(box.y * size.height)), 0, size.height);
+  const int x1 = std::clamp(static_cast<int>(std::lround((box.x + box.width) * size.width)), x0, size.width);
+  const int y1 = std::clamp(static_cast<int>(std::lround((box.y + box.height) * size.height)), y0, size.height);
+  return {x0, y0, x1 - x0, y1 - y0};
+}
+
+FractionBox fraction_box(PixelRect rect, cv::Size size) {
+  return {static_cast<double>(rect.x) / size.width, static_cast<double>(rect.y) / size.height,
+          static_cast<double>(rect.width) / size.width, static_cast<double>(rect.height) / size.height};
+}
+
+bool inside(const EdgeSample& edge, PixelRect r) {
+  return edge.x >= static_cast<float>(r.x) && edge.x < static_cast<float>(r.x + r.width) &&
+         edge.y >= static_cast<float>(r.y) && edge.y < static_cast<float>(r.y + r.height);
+}
+
+PixelRect grown(PixelRect r, double share) {
+  const int dx = static_cast<int>(r.width * share), dy = static_cast<int>(r.height * share);
+  return {r.x - dx, r.y - dy, r.width + 2 * dx, r.height + 2 * dy};
+}
+
+PixelRect square_about(double x, double y, int side, cv::Size size) {
+  const int w = std::min(side, size.width), h = std::min(side, size.height);
+  return {std::clamp(static_cast<int>(x) - w / 2, 0, size.width - w),
+          std::clamp(static_cast<int>(y) - h / 2, 0, size.height - h), w, h};
+}
+
+int tile_side_px(cv::Size size) {
+  return std::clamp(std::max(size.width, size.height) / kTilesAcross / 16 * 16, kLeastTilePx, kMostTilePx);
+}
+
+}  // namespace
+
+struct FrameMeasurer::Buffers {
+  Pyramid pyramid;
+  EdgeSearchBuffers search;
+  SpectralEstimator spectral;
+  cv::Mat linear;
+  std::vector<EdgeSample> aim_edges, frame_edges, some;
+  std::vector<std::vector<EdgeSample>> by_tile;
+  double noise = 0;
+
+  void measure_aim(PixelRect aim, Measurement& out);
+  void search_frame(const LumaPicture& picture);
+  TileMap tile_map(cv::Size size);
+  std::optional<SharpestRegion> sharpest(const TileMap& tiles, cv::Size size);
+  void measure_background(PixelRect aim, Measurement& out);
+  BlurReading reading(PixelRect region, const std::vector<EdgeSample>& edges);
+};
+
+FrameMeasurer::FrameMeasurer() : buffers_(std::make_unique<Buffers>()) {}
+FrameMeasurer::~FrameMeasurer() = default;
+FrameMeasurer::FrameMeasurer(FrameMeasurer&&) noexcept = default;
+FrameMeasurer& FrameMeasurer::operator=(FrameMeasurer&&) noexcept = default;
+
+BlurReading FrameMeasurer::Buffers::reading(PixelRect region, const std::vector<EdgeSample>& edges) {
+  BlurReading out;
+  const auto from_edges = edge_blur(edges, {.least_edges = kLeastAimEdges});
+  const auto from_spectrum = region_spectrum(pyramid, region, spectral, linear);
+  out.edges = from_edges ? from_edges->edges : 0;
+  const auto fused = fused_blur(from_edges, from_spectrum);
+  const int side = std::min(region.width, region.height);
+  if (fused && fused->bound == Bound::none && blur_disc_px(fused->squared_disc_px2) <= kWidestInRegion * side) {
+    out.estimate = fused;
+  }
+  return out;
+}
+
+// The aim: its edges on all levels, split if it holds two blurs, fused with its spectrum; and its motion.
+void FrameMeasurer::Buffers::measure_aim(PixelRect aim, Measurement& out) {
+  aim_edges.clear();
+  find_edges(pyramid, aim, noise, {.edges_per_block = kAimEdgesPerBlock}, search, aim_edges);
+  const std::vector<EdgeSample> sharper = sharper_group(aim_edges, aim);
+  out.aim.mixed = !sharper.empty();
+  if (out.aim.mixed) {
+    // The spectrum is of both together and says nothing here.
+    const auto blur = edge_blur(sharper, {.least_edges = kLeastAimEdges});
+    out.aim_blur.estimate = fused_blur(blur, std::nullopt);
+    out.aim_blur.edges = blur ? blur->edges : 0;
+    out.motion = motion(sharper);
+    if (out.aim_blur.estimate) return;
+  }
+  out.aim_blur = reading(aim, aim_edges);
+  if (!out.aim.mixed) out.motion = motion(aim_edges);
+}
+
+void FrameMeasurer::Buffers::search_frame(const LumaPicture& picture) {
+  const PixelRect whole{0, 0, picture.codes.cols, picture.codes.rows};
+  frame_edges.clear();
+  find_edges(pyramid, whole, noise, {.coarsest_level = 0, .edges_per_block = kFineEdgesPerBlock}, search, frame_edges);
+  find_edges(pyramid, whole, noise, {.finest_level = 1, .edges_per_block = kCoarseEdgesPerBlock}, search, frame_edges);
+}
+
+TileMap FrameMeasurer::Buffers::tile_map(cv::Size size) {
+  TileMap map;
+  map.tile_px = tile_side_px(size);
+  map.columns = (size.width + map.tile_px - 1) / map.tile_px;
+  map.rows = (size.height + map.tile_px - 1) / map.tile_px;
+  const auto count = static_cast<std::size_t>(map.columns) * map.rows;
+  by_tile.resize(std::max(by_tile.size(), count));
+  for (auto& tile : by_tile) tile.clear();
+  const float side = static_cast<float>(map.tile_px);
+  for (const EdgeSample& edge : frame_edges) {
+    const int column = std::clamp(static_cast<int>(edge.x / side), 0, map.columns - 1);
+    const int row = std::clamp(static_cast<int>(edge.y / side), 0, map.rows - 1);
+    by_tile[static_cast<std::size_t>(row * map.columns + column)].push_back(edge);
+  }
+  map.squared_disc_px2.assign(count, std::nullopt);
+  map.sigma_px.assign(count, 0);
+  map.edges.assign(count, 0);
+  map.clipped.assign(count, 0);
+  for (std::size_t i = 0; i < count; ++i) {
+    if (const auto blur = edge_blur(by_tile[i])) {
+      map.squared_disc_px2[i] = static_cast<float>(blur->squared_disc_px2);
+      map.sigma_px[i] = static_cast<float>(blur->sigma_px);
+      map.edges[i] = blur->edges;
+    }
+  }
+  return map;
+}
+
+// The tile with the smallest upper bound, measured again as a region of an aim's size.
+std::optional<SharpestRegion> FrameMeasurer::Buffers::sharpest(const TileMap& tiles, cv::Size size) {
+  std::optional<std::size_t> best;
+  double best_bound = 0;
+  for (std::size_t i = 0; i < tiles.edges.size(); ++i) {
+    if (!tiles.squared_disc_px2[i] || tiles.edges[i] < kLeastBestEdges) continue;
+    const double s = *tiles.squared_disc_px2[i];
+    // Signed root, so that of two tiles sharper than the baseline the sharper wins.
+    const double bound = (s >= 0 ? std::sqrt(s) : -std::sqrt(-s)) + 2 * tiles.sigma_px[i];
+    if (!best || bound < best_bound) {
+      best = i;
+      best_bound = bound;
+    }
+  }
+  if (!best) return std::nullopt;
+  const int row = static_cast<int>(*best) / tiles.columns, column = static_cast<int>(*best) % tiles.columns;
+  const PixelRect region =
+      square_about((column + 0.5) * tiles.tile_px, (row + 0.5) * tiles.tile_px, kBestRegionPx, size);
+  some.clear();
+  find_edges(pyramid, region, noise, {.edges_per_block = kAimEdgesPerBlock}, search, some);
+  SharpestRegion out{fraction_box(region, size), reading(region, some)};
+  if (!out.reading.estimate) return std::nullopt;
+  return out;
+}
+
+void FrameMeasurer::Buffers::measure_background(PixelRect aim, Measurement& out) {
+  const PixelRect clear = grown(aim, kBackgroundClear);
+  some.clear();
+  std::copy_if(frame_edges.begin(), frame_edges.end(), std::back_inserter(some),
+               [&](const EdgeSample& edge) { return !inside(edge, clear); });
+  out.background_motion = motion(some);
+}
+
+Measurement FrameMeasurer::measure(const LumaPicture& picture, const MeasureRequest& request) {
+  Buffers& b = *buffers_;
+  Measurement out;
+  out.aim = request.aim;
+  const cv::Size size = picture.codes.size();
+  const PixelRect whole{0, 0, size.width, size.height};
+  const PixelRect aim = pixel_rect(request.aim.box, size);
+  out.noise_codes = b.noise = noise_codes(picture, whole);
+  // A margin around a lone aim, so that the coarsest level still has pixels on every side of its edges.
+  constexpr int kMargin = 16 << kCoarsest;
+  build_pyramid(picture,
+                request.whole_frame ? whole
+                                    : PixelRect{aim.x - kMargin, aim.y - kMargin, aim.width + 2 * kMargin,
+                                                aim.height + 2 * kMargin},
+                kCoarsest, b.pyramid);
+  b.measure_aim(aim, out);
+  if (!request.whole_frame) return out;
+
+  b.search_frame(picture);
+  TileMap tiles = b.tile_map(size);
+  out.best = b.sharpest(tiles, size);
+  b.measure_background(aim, out);
+  if (request.keep_tiles) out.tiles = std::move(tiles);
+  return out;
+}
+
+}  // namespace focusfall
