@@ -4,9 +4,9 @@
 #include <optional>
 #include <string>
 
-#include "analysis/optics/depth_of_field.h"
 #include "analysis/optics/prediction.h"
 #include "analysis/optics/system_response.h"
+#include "analysis/optics/thin_lens.h"
 
 namespace focusfall {
 
@@ -15,7 +15,8 @@ namespace focusfall {
 //  - Limits, hyperfocal distance and depth of focus are those of the *acceptable* blur of this prediction.
 //  - Distances are from `distance_from`, as the setup's are.
 //  - near_limit_bounds_m and far_limit_bounds_m carry the interval of the focus distance through.
-//  - airy_diameter_px takes the marked f-number where the focus distance, and so the working one, is unknown.
+//  - Without a focus distance airy_diameter_px, mid_tone_level and the motion by a turning camera are those of a lens
+//    focused at infinity, a little less than what they are.
 //  - motion_blur_px needs an angular rate or a subject speed. Given both, their lengths are added: the directions are
 //    not known and this is the worst case. With flash, only its duration counts, and unless it is known there is none.
 //  - mid_tone_level is that of the scene luminance, at the exact values of the f-number and time marks, at most 1.
@@ -51,6 +52,10 @@ std::optional<double> pixel_pitch_um(const OpticalSetup& setup);
 // Focus distance from the lens, mm; nullopt if absent or out of reach.
 std::optional<double> focus_from_lens_mm(const OpticalSetup& setup);
 
+// What to add to a distance from the lens, focused at `focus_mm`, to count it from setup.distance_from: the image
+// distance for the sensor, else 0.
+double origin_offset_mm(const OpticalSetup& setup, double focus_mm);
+
 // What counts as sharp in this shot: the user's value, else by setup.acceptable_blur_rule.
 struct AcceptableBlur {
   std::optional<double> px;
@@ -62,7 +67,11 @@ AcceptableBlur acceptable_blur(const OpticalSetup& setup);
 std::optional<double> motion_time_s(const OpticalSetup& setup);
 
 // Speed of the image on the sensor, um/s, by the turning camera and the subject together (worst case); nullopt if
-// neither is given.
+// neither is given, or a subject speed without a focus distance.
 std::optional<double> image_speed_um_s(const OpticalSetup& setup);
+
+// Light on the sensor from a surface of this luminance; needs setup.exposure_time_s. The marks of f-number and time
+// are taken at their exact values.
+double luminous_exposure_lx_s(const OpticalSetup& setup, double luminance_cd_m2);
 
 }  // namespace focusfall
