@@ -118,6 +118,7 @@ struct SharpestRegion {
 struct Measurement {
   Aim aim;
   BlurReading aim_blur;
+  std::optional<BlurEstimate> aim_softer_part;   // the other group of edges where `mixed`; not the one that was judged
   std::optional<SharpestRegion> best;
   std::optional<MotionReading> motion;
   std::optional<MotionReading> background_motion;
