@@ -13,7 +13,8 @@ namespace {
 constexpr double kNormal95 = 1.96;
 
 // Fusion (measured on rendered tiles, see the accuracy tables).
-constexpr double kSpectralFromPx = 4.0;          // below, edges alone
+constexpr double kSpectralFromPx = 5.0;          // below, where edges read < 4 px too, edges alone: the spectrum is only
+constexpr double kEdgesAlonePx = 4.0;            //   given from 4 px up, so that near it only its upper errors are seen
 constexpr double kSpectralRelative = 0.04, kSpectralAbsolute_px = 0.25;
 constexpr double kDisagree = 2.0;                // standard deviations of the difference
 constexpr double kTextureSpread = 0.06;          // of c: spectrum alone, on crowded texture
@@ -127,7 +128,7 @@ std::optional<BlurEstimate> fused_blur(const std::optional<EdgeBlur>& edges,
     return blur_estimate(spectral_c * spectral_c, std::max(spectral_sigma, kSpectrumAlone * spectral_c));
   }
   const double edge_c = signed_root(edges->squared_disc_px2);
-  if (!spectrum || (spectral_c < kSpectralFromPx && !edges->lower_bound)) {
+  if (!spectrum || (spectral_c < kSpectralFromPx && edge_c < kEdgesAlonePx && !edges->lower_bound)) {
     return blur_estimate(edges->squared_disc_px2, edges->sigma_px, edges->lower_bound ? Bound::lower : Bound::none);
   }
   const double difference = spectral_c - edge_c;
