@@ -1,7 +1,9 @@
 // Fits one edge: the pixels around it gathered into an edge-spread profile, and a Gaussian step fitted to that.
 #pragma once
 
+#include <algorithm>
 #include <array>
+#include <cmath>
 #include <cstddef>
 #include <optional>
 
@@ -48,9 +50,23 @@ void gather_profile(const Pixel& pixel, float x, float y, float nx, float ny, Ed
   profile.value.fill(0);
   float lowest = 1e9f, highest = -1e9f;
   const int cx = static_cast<int>(x + 0.5f), cy = static_cast<int>(y + 0.5f);
+  const float half_length = std::sqrt(kProfileHalfLength2);
   for (int py = cy - kProfileReach; py <= cy + kProfileReach; ++py) {
     const float dy = static_cast<float>(py) - y;
-    for (int px = cx - kProfileReach; px <= cx + kProfileReach; ++px) {
+    // The part of the row that can lie in the strip; the exact test follows.
+    float first = static_cast<float>(-kProfileReach), last = static_cast<float>(kProfileReach);
+    auto clip = [&](float centre, float half, float slope) {
+      if (std::abs(slope) < 1e-3f) return;
+      const float middle = centre / slope, reach = half / std::abs(slope);
+      first = std::max(first, middle - reach);
+      last = std::min(last, middle + reach);
+    };
+    clip(-dy * ny, kProfileHalfWidth, nx);
+    clip(dy * nx, half_length, ny);
+    if (first > last) continue;
+    const int begin = std::max(static_cast<int>(std::floor(x + first)), cx - kProfileReach);
+    const int end = std::min(static_cast<int>(std::ceil(x + last)), cx + kProfileReach);
+    for (int px = begin; px <= end; ++px) {
       const float dx = static_cast<float>(px) - x;
       const float u = dx * nx + dy * ny;
       const float t = dy * nx - dx * ny;

@@ -7,6 +7,7 @@
 
 #include "analysis/measure/edge_fit.h"
 #include "analysis/measure/edge_tables.h"
+#include "analysis/measure/vector_kernel.h"
 
 namespace focusfall {
 namespace {
@@ -48,10 +49,10 @@ const GradientKernel& kernel() {
   return instance;
 }
 
-// Noise in linear light at linear value v, for `noise` 8-bit codes of it: the slope of the sRGB curve.
-float linear_noise(float v, float noise) {
-  return noise * (2.275f / 255.0f) * std::pow(std::max(v, 0.0031f), 0.5833f);
-}
+// Noise in linear light at linear value v, for `noise` 8-bit codes of it: the slope of the sRGB curve, which above its
+// straight start at kDarkest is close to this power.
+constexpr float kDarkest = 0.0031f, kSlope = 2.275f / 255.0f, kSlopePower = 0.5833f;
+float linear_noise(float v, float noise) { return noise * kSlope * std::pow(std::max(v, kDarkest), kSlopePower); }
 
 // Noise against value, tabulated: the power is too slow for every crest.
 class NoiseCurve {
@@ -81,7 +82,7 @@ float lottery(int x, int y, int level) {
   return 0.5f + 0.5f * static_cast<float>(h & 0xFFFF) / 65535.0f;
 }
 
-void filter_row(const float* __restrict in, int width, float* __restrict smooth, float* __restrict slope) {
+FOCUSFALL_VECTOR void filter_row(const float* __restrict in, int width, float* __restrict smooth, float* __restrict slope) {
   const auto& k = kernel();
   const float s0 = k.smooth[3], s1 = k.smooth[4], s2 = k.smooth[5], s3 = k.smooth[6];
   const float d1 = k.slope[4], d2 = k.slope[5], d3 = k.slope[6];
@@ -93,7 +94,7 @@ void filter_row(const float* __restrict in, int width, float* __restrict smooth,
 }
 
 // Combines seven filtered rows, `stride` apart and centred on `smooth`/`slope`, into one row of the gradient.
-void gradient_row(const float* __restrict smooth, const float* __restrict slope, int stride, int width,
+FOCUSFALL_VECTOR void gradient_row(const float* __restrict smooth, const float* __restrict slope, int stride, int width,
                   float* __restrict gx, float* __restrict gy) {
   const auto& k = kernel();
   const float s0 = k.smooth[3], s1 = k.smooth[4], s2 = k.smooth[5], s3 = k.smooth[6];
@@ -108,13 +109,41 @@ void gradient_row(const float* __restrict smooth, const float* __restrict slope,
   }
 }
 
-float largest_square(const float* __restrict gx, const float* __restrict gy, int n) {
-  float largest = 0;
+FOCUSFALL_VECTOR void square_row(const float* __restrict gx, const float* __restrict gy, int n,
+                                 float* __restrict square) {
+  for (int i = 0; i < n; ++i) square[i] = gx[i] * gx[i] + gy[i] * gy[i];
+}
+
+// Marks the pixels of a row that are crests of the gradient along its own direction and may stand out of the noise:
+// |g|^2 > scale max(v, .0031), which lies below the exact threshold for every v (see LevelSearch::search_block).
+// The neighbours ahead and behind are interpolated between the straight and the diagonal one; everything is multiplied
+// by the larger component, which spares the division. `square` points at the row's |g|^2, rows `stride` apart.
+FOCUSFALL_VECTOR int mark_crests(const float* __restrict gx, const float* __restrict gy, const float* __restrict square,
+                                 int stride, const float* __restrict value, int n, float scale,
+                                 std::int32_t* __restrict mark) {
+  int any = 0;
   for (int i = 0; i < n; ++i) {
-    const float m = gx[i] * gx[i] + gy[i] * gy[i];
-    largest = m > largest ? m : largest;
+    const float* s = square + i;
+    // All eight neighbours are loaded whether needed or not: the choice is then arithmetic and the loop a vector one.
+    const float right = s[1], left = s[-1], down = s[stride], up = s[-stride];
+    const float down_right = s[stride + 1], up_left = s[-stride - 1];
+    const float down_left = s[stride - 1], up_right = s[1 - stride];
+    const float x = gx[i], y = gy[i];
+    const float ax = x < 0 ? -x : x, ay = y < 0 ? -y : y;
+    const bool along_x = ax >= ay;
+    const bool falling = x * y >= 0;                      // the gradient points along the falling diagonal
+    const float large = along_x ? ax : ay, small = along_x ? ay : ax;
+    const float straight1 = along_x ? right : down, straight2 = along_x ? left : up;
+    const float rising1 = along_x ? up_right : down_left, rising2 = along_x ? down_left : up_right;
+    const float diagonal1 = falling ? down_right : rising1, diagonal2 = falling ? up_left : rising2;
+    const float m = s[0] * large;
+    const float v = value[i] > kDarkest ? value[i] : kDarkest;
+    const int crest = (s[0] > scale * v) & (m > (large - small) * straight1 + small * diagonal1) &
+                      (m >= (large - small) * straight2 + small * diagonal2);
+    mark[i] = crest;
+    any |= crest;
   }
-  return largest;
+  return any;
 }
 
 struct Crest {
@@ -148,12 +177,12 @@ class LevelSearch {
  public:
   LevelSearch(const Pixels& pixels, const LevelWindow& window, float noise, const EdgeSearchOptions& options,
               EdgeSearchBuffers& buffers)
-      : pixels_(pixels), window_(window), noise_(noise), options_(options), buffers_(buffers) {}
+      : pixels_(pixels), window_(window), noise_(noise), codes_of_noise_(noise), options_(options), buffers_(buffers) {}
 
   // Calls `found(crest, fit, ...)` for every edge that passes the gates, block by block.
   template <class Found>
   void run(const Found& found) {
-    for (int y = window_.y0; y < window_.y1; y += kBlock) {
+    for (int y = window_.y0; y < window_.y1; y += kBlock * options_.block_row_step) {
       const int rows = std::min(kBlock, window_.y1 - y);
       for (int x = window_.x0; x < window_.x1; x += kPanelWidth) {
         const int columns = std::min(kPanelWidth, window_.x1 - x);
@@ -175,22 +204,26 @@ class LevelSearch {
     const int loaded = width + 2 * kGradientReach;        // pixels a row
     const int source_rows = rows + 2 + 2 * kGradientReach;
     stride_ = width;
-    buffers_.linear.resize(static_cast<std::size_t>(loaded));
+    linear_stride_ = loaded;
+    buffers_.linear.resize(static_cast<std::size_t>(loaded) * source_rows);
     buffers_.smooth_x.resize(static_cast<std::size_t>(width) * source_rows);
     buffers_.slope_x.resize(buffers_.smooth_x.size());
     buffers_.gradient_x.resize(static_cast<std::size_t>(width) * (rows + 2));
     buffers_.gradient_y.resize(buffers_.gradient_x.size());
+    buffers_.square.resize(buffers_.gradient_x.size());
     for (int r = 0; r < source_rows; ++r) {
       const int y = y0 - 1 - kGradientReach + r;
       const int x = x0 - 1 - kGradientReach;
-      for (int i = 0; i < loaded; ++i) buffers_.linear[static_cast<std::size_t>(i)] = pixels_(x + i, y);
-      filter_row(buffers_.linear.data(), width, buffers_.smooth_x.data() + r * stride_,
-                 buffers_.slope_x.data() + r * stride_);
+      float* linear = buffers_.linear.data() + r * linear_stride_;
+      for (int i = 0; i < loaded; ++i) linear[i] = pixels_(x + i, y);
+      filter_row(linear, width, buffers_.smooth_x.data() + r * stride_, buffers_.slope_x.data() + r * stride_);
     }
     for (int r = 0; r < rows + 2; ++r) {
       gradient_row(buffers_.smooth_x.data() + (r + kGradientReach) * stride_,
                    buffers_.slope_x.data() + (r + kGradientReach) * stride_, stride_, width,
                    buffers_.gradient_x.data() + r * stride_, buffers_.gradient_y.data() + r * stride_);
+      square_row(buffers_.gradient_x.data() + r * stride_, buffers_.gradient_y.data() + r * stride_, width,
+                 buffers_.square.data() + r * stride_);
     }
   }
 
@@ -198,39 +231,38 @@ class LevelSearch {
   void search_block(int bx, int columns, int rows) {
     crests_.clear();
     const float least = kLeastGradient * kernel().noise_gain;
-    const float floor2 = square(least * noise_.at(0.0f));
+    // sigma(v)^2 = (slope noise)^2 v^(2 power); v^(2 power - 1) falls towards kDarkest, where it is taken for the mark.
+    const float scale = square(least * kSlope * codes_of_noise_) * std::pow(kDarkest, 2 * kSlopePower - 1);
     for (int r = 0; r < rows; ++r) {
       const float* gx = buffers_.gradient_x.data() + (r + 1) * stride_ + bx + 1;
       const float* gy = buffers_.gradient_y.data() + (r + 1) * stride_ + bx + 1;
-      if (largest_square(gx, gy, columns) < floor2) continue;
+      const float* value = buffers_.linear.data() + (r + 1 + kGradientReach) * linear_stride_ + bx + 1 + kGradientReach;
+      const float* squares = buffers_.square.data() + (r + 1) * stride_ + bx + 1;
+      std::array<std::int32_t, kBlock> mark;
+      if (!mark_crests(gx, gy, squares, stride_, value, columns, scale, mark.data())) continue;
       for (int i = 0; i < columns; ++i) {
-        const float m2 = gx[i] * gx[i] + gy[i] * gy[i];
-        if (m2 < floor2) continue;
-        consider(gx + i, gy + i, m2, panel_x_ + bx + i, panel_y_ + r, least);
+        if (mark[static_cast<std::size_t>(i)]) consider(gx + i, gy + i, squares + i, value[i], panel_x_ + bx + i, panel_y_ + r, least);
       }
     }
     ration();
   }
 
-  // Keeps a pixel that is the crest of the gradient along its own direction.
-  void consider(const float* gx, const float* gy, float m2, int x, int y, float least) {
+  // Places a marked crest to a fraction of a pixel, if it stands out of the noise.
+  void consider(const float* gx, const float* gy, const float* squares, float value, int x, int y, float least) {
+    const float m2 = *squares;
+    const float sigma = noise_.at(value);
+    if (m2 < square(least * sigma)) return;
     const float ax = std::abs(*gx), ay = std::abs(*gy);
-    // The two neighbours across the edge, interpolated between the straight and the diagonal one.
     const bool along_x = ax >= ay;
     const float f = along_x ? ay / ax : ax / ay;
     const int sx = *gx >= 0 ? 1 : -1, sy = *gy >= 0 ? 1 : -1;
     const std::ptrdiff_t straight = along_x ? sx : sy * stride_;
     const std::ptrdiff_t diagonal = sx + static_cast<std::ptrdiff_t>(sy) * stride_;
-    auto magnitude = [&](std::ptrdiff_t o) { return std::sqrt(gx[o] * gx[o] + gy[o] * gy[o]); };
-    const float m = std::sqrt(m2);
-    const float ahead = (1 - f) * magnitude(straight) + f * magnitude(diagonal);
-    if (ahead >= m) return;
-    const float behind = (1 - f) * magnitude(-straight) + f * magnitude(-diagonal);
-    if (behind > m) return;
-    const float sigma = noise_.at(pixels_(x, y));
-    if (m < least * sigma) return;
+    const float ahead2 = (1 - f) * squares[straight] + f * squares[diagonal];
+    const float behind2 = (1 - f) * squares[-straight] + f * squares[-diagonal];
 
     // Vertex of the parabola through the three magnitudes, in steps of the interpolated neighbour's distance.
+    const float m = std::sqrt(m2), ahead = std::sqrt(ahead2), behind = std::sqrt(behind2);
     const float curvature = ahead + behind - 2 * m;
     const float vertex = curvature < 0 ? 0.5f * (behind - ahead) / curvature : 0.0f;
     const float step = std::sqrt(1 + f * f);
@@ -267,11 +299,12 @@ class LevelSearch {
   const Pixels& pixels_;
   const LevelWindow window_;
   const NoiseCurve noise_;
+  const float codes_of_noise_;
   const EdgeSearchOptions& options_;
   EdgeSearchBuffers& buffers_;
   std::vector<Crest> crests_;
   EdgeProfile profile_;
-  int panel_x_ = 0, panel_y_ = 0, stride_ = 0;
+  int panel_x_ = 0, panel_y_ = 0, stride_ = 0, linear_stride_ = 0;
 };
 
 // The search window of one level for a region of level 0: inside the pyramid, clear of its border.

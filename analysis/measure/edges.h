@@ -15,13 +15,14 @@ struct EdgeSearchOptions {
   int finest_level = 0;          // 0..4
   int coarsest_level = 4;        // finest_level..4
   int edges_per_block = 4;       // at most, in each 32x32 block of a level
+  int block_row_step = 1;        // search every n-th row of blocks only
 };
 
 // Reused from call to call; holds no state that a result depends on.
 struct EdgeSearchBuffers {
-  std::vector<float> linear;                    // rows of the panel, linearised
+  std::vector<float> linear;                    // of the panel and what its filters reach
   std::vector<float> smooth_x, slope_x;         // filtered along the rows
-  std::vector<float> gradient_x, gradient_y;    // of the panel's own rows and one more on each side
+  std::vector<float> gradient_x, gradient_y, square;   // of the panel and one more pixel on each side
 };
 
 // Appends to `edges` those whose position lies in `region` (level-0 px). The pyramid must cover the region.

@@ -17,6 +17,8 @@ namespace {
 constexpr int kAimEdgesPerBlock = 6;      // the aim is small: take what is there
 constexpr int kFineEdgesPerBlock = 2;     // of the whole frame on level 0, where most of the time goes
 constexpr int kCoarseEdgesPerBlock = 3;
+constexpr int kManyPixels = 6'000'000;    // from here on every second row of blocks is searched on level 0: a tile of
+                                          // 128 px still holds eight blocks
 constexpr int kLeastAimEdges = 12;        // below, the aim has no evidence (measured)
 constexpr double kWidestInRegion = 0.2;   // c / side of the region: wider, soft shading passes for a blurred edge
 constexpr int kLeastBestEdges = 12;       // a tile with fewer is not called the sharpest
@@ -117,7 +119,9 @@ void FrameMeasurer::Buffers::measure_aim(PixelRect aim, Measurement& out) {
 void FrameMeasurer::Buffers::search_frame(const LumaPicture& picture) {
   const PixelRect whole{0, 0, picture.codes.cols, picture.codes.rows};
   frame_edges.clear();
-  find_edges(pyramid, whole, noise, {.coarsest_level = 0, .edges_per_block = kFineEdgesPerBlock}, search, frame_edges);
+  const int step = picture.codes.total() > kManyPixels ? 2 : 1;
+  find_edges(pyramid, whole, noise,
+             {.coarsest_level = 0, .edges_per_block = kFineEdgesPerBlock, .block_row_step = step}, search, frame_edges);
   find_edges(pyramid, whole, noise, {.finest_level = 1, .edges_per_block = kCoarseEdgesPerBlock}, search, frame_edges);
 }
 
