@@ -8,7 +8,6 @@
 // The largest patch is the largest 8-connected set of pixels with two or more clipped channels, found exactly.
 #pragma once
 
-#include <array>
 #include <cstdint>
 #include <vector>
 
@@ -26,10 +25,8 @@ inline constexpr double kClippedPointsFraction = 2e-5;
 // From here on a single clipped channel is reported as colour (judgement: as an area, but it need not be connected).
 inline constexpr double kClippedColourFraction = 5e-4;
 
-struct ClippingOptions {
-  int tile_px = 128;         // side of the square tiles of clipped_tiles()
-  PixelRect aim;             // counted on its own; empty = no aim
-};
+// Side of the square cells in which clipped pixels are counted; tiles are whole multiples of it.
+inline constexpr int kClippingCellPx = 64;
 
 // Whole numbers of pixels. Fractions are made of them at the end only.
 struct ClippingCounts {
@@ -42,12 +39,12 @@ struct ClippingCounts {
   std::int64_t largest_patch = 0;  // two or more channels, 8-connected
 };
 
-// Grows connected components row by row from runs of set pixels; memory is that of two rows.
+// Grows 8-connected components row by row from runs of set pixels; memory is that of two rows.
 class PatchFinder {
  public:
-  void start(int width_px);
-  // `mask` holds one bit a pixel, least significant first, in words of 64; bits past the width are 0.
-  void take_row(const std::uint64_t* mask);
+  void start();
+  // One bit a pixel, the leftmost in the lowest bit of the first word; bits past the width are 0.
+  void take_row(const std::uint64_t* bits, int words);
   void take_empty_row();
   std::int64_t largest() const { return largest_; }
 
@@ -56,48 +53,55 @@ class PatchFinder {
     int begin, end;   // [begin, end)
     int component;
   };
+  void find_runs(const std::uint64_t* bits, int words);
   int root(int component);
   void join(int a, int b);
+  void renumber();
 
-  int width_px_ = 0;
   std::int64_t largest_ = 0;
   std::vector<Run> above_, row_;
-  std::vector<int> parent_;
-  std::vector<std::int64_t> size_;
-  std::vector<int> renumbered_;
-  std::vector<std::int64_t> next_size_;
+  std::vector<int> parent_, renumbered_;
+  std::vector<std::int64_t> size_, kept_size_;
+};
+
+// One bit a pixel for 64 pixels of a row, the leftmost in the lowest bit.
+struct ClippedBits {
+  std::uint64_t red = 0, green = 0, blue = 0;
+  std::uint64_t black = 0;                   // every channel 0
 };
 
 // Feed strips from top to bottom. Reused from frame to frame by start(); nothing is allocated for a frame of the same
 // size as the last.
 class ClippingAccumulator {
  public:
-  void start(int width_px, int height_px, const ClippingOptions& options);
+  // `aim` is counted on its own; empty = no aim.
+  void start(int width_px, int height_px, PixelRect aim);
   void take(const YccStrip& strip);
   void take(const RgbStrip& strip);
 
   const ClippingCounts& counts() const { return counts_; }
   Clipping clipping() const;                 // fractions and kind
-  int tile_rows() const { return tile_rows_; }
-  int tile_columns() const { return tile_columns_; }
-  std::vector<float> clipped_tiles() const;  // fraction of each tile with any channel clipped, row by row
+  // Fraction of each square tile with any channel clipped, row by row; the last row and column of tiles may be cut.
+  // tile_px is a multiple of kClippingCellPx.
+  std::vector<float> clipped_tiles(int tile_px) const;
 
  private:
-  void start_masks(int rows);
-  void count_masks(int first_row, int rows);
-  void count_ycc_block(const YccStrip& strip, int x, int width);
-  template <class Code>
+  void start_band(int rows);
+  void count(int first_row, int row, int word, const ClippedBits& bits);
+  void finish_band(int rows);
+  void take_ycc_band(const YccStrip& strip, int band_row, int rows);
+  template <class Code, int channels>
   void take_rgb(const RgbStrip& strip);
 
-  ClippingOptions options_;
   ClippingCounts counts_;
   PatchFinder patches_;
+  PixelRect aim_;
   int width_px_ = 0, height_px_ = 0;
-  int words_ = 0;                            // of 64 pixels a row
-  int tile_rows_ = 0, tile_columns_ = 0;
-  std::vector<std::int64_t> tile_any_;
-  std::vector<std::uint64_t> any_, two_;     // masks of the strip at hand, rows x words
-  std::vector<std::uint8_t> row_touched_;    // rows of the strip that hold a set bit
+  int words_ = 0;                            // of 64 pixels a row, and columns of cells
+  std::vector<std::uint64_t> aim_bits_;      // one row of them
+  std::vector<std::int64_t> cell_any_;
+  std::vector<std::uint64_t> two_;           // pixels of the band at hand with two or more channels clipped
+  std::vector<std::uint8_t> row_touched_;    // rows of the band that hold such a pixel
 };
 
 // area, points, colour or none, from the named fractions above.

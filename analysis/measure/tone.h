@@ -23,10 +23,11 @@ class ToneAccumulator {
   std::optional<Tone> tone(const std::vector<float>& linear_of_code) const;
 
  private:
+  std::vector<std::uint64_t> counts(const std::vector<std::uint32_t>& lanes) const;
+
   int code_count_ = 0;
   PixelRect aim_;
-  std::vector<std::uint32_t> lanes_;       // interleaved part counts of the whole, so that equal neighbours do not wait
-  std::vector<std::uint32_t> aim_counts_;
+  std::vector<std::uint32_t> lanes_, aim_lanes_;   // part counts, interleaved by code
 };
 
 }  // namespace focusfall
