@@ -24,8 +24,7 @@ constexpr double kWidestInRegion = 0.2;   // c / side of the region: wider, soft
 constexpr int kLeastBestEdges = 12;       // a tile with fewer is not called the sharpest
 constexpr int kBestRegionPx = 192;        // side of the sharpest region: the least that an aim has
 constexpr double kBackgroundClear = 0.25; // of the aim's size left out around it when the background is measured
-constexpr int kTilesAcross = 48;          // about; keeps the map readable and its tiles above 64 px
-constexpr int kLeastTilePx = 64, kMostTilePx = 128;
+constexpr int kWideFrame_px = 4000;       // from here on tiles are 128 px a side, else 64: about 25 to 60 columns
 constexpr int kCoarsest = Pyramid::kLevels - 1;
 
 PixelRect pixel_rect(const FractionBox& box, cv::Size size) {
@@ -58,7 +57,7 @@ PixelRect square_about(double x, double y, int side, cv::Size size) {
 }
 
 int tile_side_px(cv::Size size) {
-  return std::clamp(std::max(size.width, size.height) / kTilesAcross / 16 * 16, kLeastTilePx, kMostTilePx);
+  return std::max(size.width, size.height) >= kWideFrame_px ? 128 : 64;
 }
 
 }  // namespace

@@ -68,9 +68,9 @@ struct PictureFormat {
   int remarks = 0;              // oddities that the codec reported and that did not touch the pixels
   MeasuredFrom measured_from = MeasuredFrom::picture;
   Transfer transfer = Transfer::srgb_assumed;
-  std::vector<float> linear_of_code;     // for LumaPicture, 256 or 65536 entries; empty: the sRGB curve
-  std::optional<int> orientation;        // Exif 1..8 where the container states it and overrules Exif (HEIF)
-  std::vector<DecodeNote> notes;
+  std::vector<float> linear_of_code{};     // for LumaPicture, 256 or 65536 entries; empty: the sRGB curve
+  std::optional<int> orientation{};        // Exif 1..8 where the container states it and overrules Exif (HEIF)
+  std::vector<DecodeNote> notes{};
 };
 
 // What receives a picture. start() comes once, before the first strip; the strips follow from top to bottom without

@@ -28,7 +28,7 @@ class PictureSink final : public StripSink {
   // After the last strip. The codes point into memory that the next picture overwrites.
   const LumaPicture& luma() const { return luma_; }
   Clipping clipping() const { return clipping_.clipping(); }
-  std::vector<float> clipped_tiles() const { return clipping_.clipped_tiles(); }
+  std::vector<float> clipped_tiles(int tile_px) const { return clipping_.clipped_tiles(tile_px); }
   std::optional<Tone> tone() const { return tone_.tone(luma_.linear_of_code); }
 
  private:
@@ -37,6 +37,7 @@ class PictureSink final : public StripSink {
   FractionBox aim_;
   std::vector<std::byte> memory_;     // of the luma plane: grows to the largest picture
   LumaPicture luma_;
+  bool curve_is_srgb_ = false;        // the curve kept from the last picture
   ClippingAccumulator clipping_;
   ToneAccumulator tone_;
   PictureFormat format_;
