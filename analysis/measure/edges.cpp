@@ -22,6 +22,7 @@ constexpr float kMostResidual = 0.06f, kMostResidualSaturated = 0.12f;   // rms 
 constexpr float kLeastContrast = 10.0f;  // amplitude in standard deviations of the noise
 constexpr float kSaturatedSigma = 2.65f; // level px: wider, the 8 px window no longer holds the edge
 constexpr float kSharpestSigma = 0.45f;  // level-0 px: sharper than any optics, a hot pixel or a drawn line
+constexpr int kTriesPerEdge = 2;         // crests fitted at most for each edge kept: crowded ones often fail the gates
 constexpr float kNoisePerLevel = 0.4f;   // of the noise survives each halving; .31 if it were white, more after demosaicing
 
 // Derivative of a Gaussian and the Gaussian, standard deviation 1, 7 taps.
@@ -156,6 +157,7 @@ struct LevelWindow {
   int level;
   int width, height;         // of the level
   int x0, y0, x1, y1;        // search window, already clear of the border
+  int origin_x, origin_y;    // of the level's region in the whole picture, px of the level
 };
 
 // Linear values of a level at whole coordinates, level 0 through the curve.
@@ -189,7 +191,10 @@ class LevelSearch {
         fill_panel(x, y, columns, rows);
         for (int bx = 0; bx < columns; bx += kBlock) {
           search_block(bx, std::min(kBlock, columns - bx), rows);
-          for (std::size_t i = 0; i < crests_.size(); ++i) fit_crest(crests_[i], found);
+          int kept = 0;
+          for (std::size_t i = 0; i < crests_.size() && kept < options_.edges_per_block; ++i) {
+            kept += fit_crest(crests_[i], found);
+          }
         }
       }
     }
@@ -269,11 +274,11 @@ class LevelSearch {
     const float nx = *gx / m, ny = *gy / m;
     const float shift = std::clamp(vertex, -0.5f, 0.5f) * step;
     crests_.push_back({static_cast<float>(x) + shift * nx, static_cast<float>(y) + shift * ny, nx, ny,
-                       m / sigma * lottery(x, y, window_.level)});
+                       m / sigma * lottery(window_.origin_x + x, window_.origin_y + y, window_.level)});
   }
 
   void ration() {
-    const auto most = static_cast<std::size_t>(options_.edges_per_block);
+    const auto most = static_cast<std::size_t>(kTriesPerEdge * options_.edges_per_block);
     if (crests_.size() <= most) return;
     std::partial_sort(crests_.begin(), crests_.begin() + static_cast<std::ptrdiff_t>(most), crests_.end(),
                       [](const Crest& a, const Crest& b) { return a.rank > b.rank; });
@@ -281,17 +286,18 @@ class LevelSearch {
   }
 
   template <class Found>
-  void fit_crest(const Crest& crest, const Found& found) {
+  bool fit_crest(const Crest& crest, const Found& found) {
     gather_profile(pixels_, crest.x, crest.y, crest.nx, crest.ny, profile_);
-    if (profile_.highest > kBrightestNear || profile_.lowest < kDarkestNear) return;
+    if (profile_.highest > kBrightestNear || profile_.lowest < kDarkestNear) return false;
     const auto fit = fit_profile(profile_);
-    if (!fit || fit->amplitude <= 0 || std::abs(fit->offset_px) > kMostOffset) return;
+    if (!fit || fit->amplitude <= 0 || std::abs(fit->offset_px) > kMostOffset) return false;
     const bool saturated = fit->sigma_px > kSaturatedSigma;
-    if (fit->residual > (saturated ? kMostResidualSaturated : kMostResidual)) return;
+    if (fit->residual > (saturated ? kMostResidualSaturated : kMostResidual)) return false;
     const float middle = fit->base + 0.5f * fit->amplitude;
-    if (fit->amplitude < kLeastContrast * noise_.at(middle)) return;
-    if (window_.level == 0 && fit->sigma_px < kSharpestSigma) return;
+    if (fit->amplitude < kLeastContrast * noise_.at(middle)) return false;
+    if (window_.level == 0 && fit->sigma_px < kSharpestSigma) return false;
     found(crest, *fit, saturated);
+    return true;
   }
 
   static float square(float v) { return v * v; }
@@ -319,7 +325,9 @@ LevelWindow level_window(const Pyramid& pyramid, PixelRect region, int level) {
           std::max(x >> level, border),
           std::max(y >> level, border),
           std::min(up(x + region.width), width - border),
-          std::min(up(y + region.height), height - border)};
+          std::min(up(y + region.height), height - border),
+          pyramid.region.x >> level,
+          pyramid.region.y >> level};
 }
 
 template <class Pixels>

@@ -15,13 +15,13 @@ namespace focusfall {
 namespace {
 
 constexpr int kAimEdgesPerBlock = 6;      // the aim is small: take what is there
-constexpr int kFineEdgesPerBlock = 2;     // of the whole frame on level 0, where most of the time goes
-constexpr int kCoarseEdgesPerBlock = 3;
+constexpr int kFineEdgesPerBlock = 3;     // of the whole frame on level 0, where most of the time goes
+constexpr int kCoarseEdgesPerBlock = 4;
 constexpr int kManyPixels = 6'000'000;    // from here on every second row of blocks is searched on level 0: a tile of
                                           // 128 px still holds eight blocks
 constexpr int kLeastAimEdges = 12;        // below, the aim has no evidence (measured)
 constexpr double kWidestInRegion = 0.2;   // c / side of the region: wider, soft shading passes for a blurred edge
-constexpr int kLeastBestEdges = 12;       // a tile with fewer is not called the sharpest
+constexpr int kLeastBestEdges = 8;        // a tile with fewer is not taken for the sharpest; it is measured again then
 constexpr int kBestRegionPx = 192;        // side of the sharpest region: the least that an aim has
 constexpr double kBackgroundClear = 0.25; // of the aim's size left out around it when the background is measured
 constexpr int kWideFrame_px = 4000;       // from here on tiles are 128 px a side, else 64: about 25 to 60 columns
