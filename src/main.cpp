@@ -1,6 +1,121 @@
-#include <fmt/core.h>
+// The program: finds the command, reads its options, turns what went wrong into an exit code.
+#include <fcntl.h>
+#include <fmt/format.h>
+#include <unistd.h>
 
-int main() {
-  fmt::print("focusfall: commands come with the next commits.\n");
-  return 0;
+#include <CLI/CLI.hpp>
+#include <algorithm>
+#include <clocale>
+#include <csignal>
+#include <exception>
+#include <filesystem>
+#include <string>
+#include <system_error>
+#include <vector>
+
+#include "metadata/read_capture.h"
+#include "src/commands/command.h"
+#include "src/output/data_stream.h"
+#include "src/output/progress.h"
+#include "src/output/visible_text.h"
+
+namespace focusfall {
+namespace {
+
+constexpr const char* kAbout =
+    "Focusfall predicts each shot from its own capture data with the thin-lens, f-number and exposure model, measures "
+    "the pixels, and compares the two.";
+
+constexpr const char* kFooter =
+    "A bare folder runs cull, a bare file check. Exit codes: 0 done, 1 some frames could not be done, 2 wrong use, "
+    "3 the run could not go on, 130 interrupted.";
+
+bool is_command(const std::string& word) {
+  return std::ranges::any_of(commands(), [&word](const Command& command) { return word == command.name; });
+}
+
+// "focusfall FOLDER" means cull and "focusfall FILE" check; what was chosen is said. Words that are neither a command
+// nor there are left to the parser.
+void put_implied_command(std::vector<std::string>& arguments) {
+  if (arguments.empty() || arguments.front().starts_with('-') || is_command(arguments.front())) return;
+  std::error_code error;
+  const bool folder = std::filesystem::is_directory(arguments.front(), error);
+  const bool list = arguments.front().starts_with('@');
+  if (!folder && !list && !std::filesystem::exists(arguments.front(), error)) return;
+  const std::string command = folder && is_command("cull") ? "cull" : "check";
+  if (folder && command != "cull") {
+    say("A bare folder runs cull; this build has no cull yet, so it runs check.");
+  } else {
+    say(fmt::format("{} runs {}.", folder ? "A bare folder" : list ? "A bare list" : "A bare file", command));
+  }
+  arguments.insert(arguments.begin(), command);
+}
+
+// A descriptor that was closed before the start must not be given to the first file that is opened.
+void open_standard_descriptors() {
+  for (const int descriptor : {STDIN_FILENO, STDOUT_FILENO, STDERR_FILENO}) {
+    if (fcntl(descriptor, F_GETFD) >= 0) continue;
+    const int null = open("/dev/null", descriptor == STDIN_FILENO ? O_RDONLY : O_WRONLY);
+    if (null >= 0 && null != descriptor) {
+      dup2(null, descriptor);
+      close(null);
+    }
+  }
+}
+
+ExitCode run(std::vector<std::string> arguments) {
+  CLI::App app(kAbout, "focusfall");
+  app.footer(kFooter);
+  app.set_version_flag("--version", "focusfall " FOCUSFALL_VERSION);
+  app.require_subcommand(1);
+  std::function<ExitCode()> chosen;
+  for (const Command& command : commands()) {
+    CLI::App* sub = app.add_subcommand(command.name, command.summary);
+    sub->callback([&chosen, action = command.add(*sub)] { chosen = action; });
+  }
+
+  put_implied_command(arguments);
+  std::ranges::reverse(arguments);   // as CLI11 takes them
+  try {
+    app.parse(arguments);
+  } catch (const CLI::Success& success) {
+    // --help and --version: their text is data.
+    DataStream out(STDOUT_FILENO);
+    const auto subcommands = app.get_subcommands();
+    const bool version = dynamic_cast<const CLI::CallForVersion*>(&success) != nullptr;
+    out.write(version                 ? std::string(success.what()) + "\n"
+              : subcommands.empty() ? app.help()
+                                    : subcommands.front()->help());
+    return ExitCode::done;
+  } catch (const CLI::ParseError& error) {
+    const auto subcommands = app.get_subcommands();
+    throw WrongUse(fmt::format("{}\nfocusfall {}{}--help says more.", visible_text(error.what()),
+                               subcommands.empty() ? "" : subcommands.front()->get_name(),
+                               subcommands.empty() ? "" : " "));
+  }
+  return chosen();
+}
+
+ExitCode run_guarded(const std::vector<std::string>& arguments) {
+  try {
+    return run(arguments);
+  } catch (const WrongUse& error) {
+    say(fmt::format("focusfall: {}", error.what()));
+    return ExitCode::wrong_use;
+  } catch (const std::exception& error) {
+    say(fmt::format("focusfall: {}", visible_text(error.what())));
+    return ExitCode::broken_off;
+  }
+}
+
+}  // namespace
+}  // namespace focusfall
+
+int main(int argc, char** argv) {
+  focusfall::open_standard_descriptors();
+  std::setlocale(LC_CTYPE, "C.UTF-8");   // for the width of characters; numbers stay as in the C locale
+  std::signal(SIGPIPE, SIG_IGN);
+  focusfall::install_interrupt_handler();
+  focusfall::initialise_capture_reading();
+  return static_cast<int>(focusfall::run_guarded({argv + 1, argv + argc}));
 }

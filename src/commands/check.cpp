@@ -1,0 +1,135 @@
+// `check`: every frame on its own, capture -> predicted -> measured -> verdict.
+#include <fmt/format.h>
+#include <unistd.h>
+
+#include <CLI/CLI.hpp>
+#include <algorithm>
+#include <array>
+#include <memory>
+#include <string>
+#include <utility>
+#include <vector>
+
+#include "src/commands/command.h"
+#include "src/commands/common_options.h"
+#include "src/output/csv.h"
+#include "src/output/data_stream.h"
+#include "src/output/frame_json.h"
+#include "src/output/frame_text.h"
+#include "src/output/names.h"
+#include "src/output/progress.h"
+#include "src/output/visible_text.h"
+#include "src/pipeline/frame_pool.h"
+
+namespace focusfall {
+namespace {
+
+struct CheckOptions {
+  std::vector<std::string> inputs;
+  UserValues values;
+  SettingsChoice settings;
+  Format format = Format::text;
+  bool brief = false;            // one line a frame
+  int workers = 0;               // 0: one a core
+};
+
+// What came out, counted for the closing line.
+struct Tally {
+  std::size_t frames = 0;
+  std::size_t not_done = 0;
+  std::array<std::size_t, 6> focus{};   // by FocusVerdict
+};
+
+std::string tally_text(const Tally& tally) {
+  std::string text = fmt::format("{} frames", tally.frames);
+  const char* separator = ": ";
+  for (const auto& entry : names_of<FocusVerdict>()) {
+    const std::size_t count = tally.focus[static_cast<std::size_t>(entry.value)];
+    if (count == 0) continue;
+    text += fmt::format("{}{} {}", separator, count, entry.name);
+    separator = ", ";
+  }
+  if (tally.not_done > 0) text += fmt::format("{}{} could not be done", separator, tally.not_done);
+  return text + ".";
+}
+
+class CheckRun {
+ public:
+  explicit CheckRun(const CheckOptions& options) : options_(options) {}
+
+  ExitCode run() {
+    const Settings settings = load_settings(options_.settings);
+    const Inputs inputs = load_inputs(options_.inputs);
+    layout_ = text_layout(terminal_columns(STDOUT_FILENO), longest_path(inputs.paths));
+    if (options_.format == Format::csv) out_.write(csv_header());
+
+    Progress progress(inputs.paths.size(), is_terminal(STDERR_FILENO));
+    const PoolOutcome outcome =
+        run_frames(inputs.paths, options_.values, settings, {.workers = options_.workers, .cancel = &interrupted()},
+                   [&](FrameRecord&& record) { return deliver(record, progress); });
+    progress.clear();
+    if (options_.format == Format::text && tally_.frames > 1 && !out_.closed()) say(tally_text(tally_));
+    if (interrupted()) return ExitCode::interrupted;
+    static_cast<void>(outcome);
+    return tally_.not_done > 0 || !inputs.problems.empty() ? ExitCode::frames_missing : ExitCode::done;
+  }
+
+ private:
+  static int longest_path(const std::vector<std::string>& paths) {
+    int longest = 0;
+    for (const std::string& path : paths) longest = std::max(longest, text_columns(visible_text(path)));
+    return longest;
+  }
+
+  // False once nobody reads any more.
+  bool deliver(const FrameRecord& record, Progress& progress) {
+    ++tally_.frames;
+    progress.clear();
+    if (!record.done) {
+      ++tally_.not_done;
+      say(visible_text(record.path) + ": " + failure_text(record));
+    } else if (record.verdict) {
+      ++tally_.focus[static_cast<std::size_t>(record.verdict->focus)];
+    }
+    const bool open = out_.write(text_of(record));
+    progress.advance();
+    return open;
+  }
+
+  std::string text_of(const FrameRecord& record) const {
+    switch (options_.format) {
+      case Format::json: return json_line(frame_json(record, {.tiles = options_.values.tiles}));
+      case Format::csv: return csv_line(record);
+      case Format::text: break;
+    }
+    return options_.brief ? brief_text(record, layout_) : frame_text(record, layout_);
+  }
+
+  const CheckOptions& options_;
+  DataStream out_{STDOUT_FILENO};
+  TextLayout layout_;
+  Tally tally_;
+};
+
+}  // namespace
+
+std::function<ExitCode()> add_check(CLI::App& app) {
+  auto options = std::make_shared<CheckOptions>();
+  add_input_argument(app, options->inputs, true);
+  add_format_option(app, options->format, {Format::text, Format::json, Format::csv});
+  app.add_flag("--brief", options->brief, "Text with one line a frame. Default: a paragraph.");
+  app.add_flag("--tiles", options->values.tiles, "Put the map of blur over the frame into the JSON. Default: off.");
+  app.add_option("--level", options->values.level, "How much of a frame is measured: full or aim-only. Default: full.")
+      ->transform(CLI::CheckedTransformer(std::map<std::string, MeasureLevel>{{"full", MeasureLevel::full},
+                                                                             {"aim-only", MeasureLevel::aim_only}})
+                      .description(""))
+      ->type_name("LEVEL");
+  app.add_option("--workers", options->workers, "Frames measured at a time. Default: one for each core.")
+      ->check(CLI::Range(1, 256).description(""))
+      ->type_name("COUNT");
+  add_value_options(app, options->values);
+  add_settings_options(app, options->settings);
+  return [options] { return CheckRun(*options).run(); };
+}
+
+}  // namespace focusfall

@@ -1,0 +1,32 @@
+#include "src/commands/command.h"
+
+#include <csignal>
+
+namespace focusfall {
+namespace {
+
+constexpr Command kCommands[] = {
+    {"check", "Judge frames one by one: capture, predicted, measured, verdict.", add_check},
+    {"predict", "The model of a shot or a plan: depth of field, blur, diffraction, motion, exposure.", add_predict},
+};
+
+std::atomic<bool> interrupt_flag{false};
+static_assert(std::atomic<bool>::is_always_lock_free, "set from a signal handler");
+
+void on_interrupt(int /*signal*/) { interrupt_flag = true; }
+
+}  // namespace
+
+std::span<const Command> commands() { return kCommands; }
+
+const std::atomic<bool>& interrupted() { return interrupt_flag; }
+
+void install_interrupt_handler() {
+  struct sigaction action{};
+  action.sa_handler = on_interrupt;
+  action.sa_flags = static_cast<int>(SA_RESETHAND);   // the second one has its usual effect
+  sigaction(SIGINT, &action, nullptr);
+  sigaction(SIGTERM, &action, nullptr);
+}
+
+}  // namespace focusfall
