@@ -154,6 +154,7 @@ bool decode_into(const std::vector<std::uint8_t>& jpeg, J_COLOR_SPACE space, cv:
   jpeg_read_header(&info, TRUE);
   info.out_color_space = space;
   info.dct_method = JDCT_ISLOW;
+  info.do_fancy_upsampling = FALSE;  // chroma as the file holds it, the meaning that clipping is counted by
   jpeg_start_decompress(&info);
   out.create(static_cast<int>(info.output_height), static_cast<int>(info.output_width),
              space == JCS_GRAYSCALE ? CV_8UC1 : CV_8UC3);
