@@ -19,6 +19,6 @@ build=$top/build-tests
 cmake -S "$top" -B "$build" -G Ninja -DCMAKE_BUILD_TYPE=Release -DFOCUSFALL_TESTS=ON >/dev/null
 cmake --build "$build"
 if [ "$accuracy" = 1 ]; then
-  exec "$build/tests/accuracy" "$@"
+  exec "$build/tests/accuracy/accuracy" "$@"
 fi
 exec ctest --test-dir "$build" --output-on-failure --no-tests=error -j "$(nproc)" "$@"

@@ -1,0 +1,25 @@
+// What the small part of the held-out sets may not fall behind. The targets are those of the full sets; here each
+// bound is the target widened for the scatter of few cases, or, where the target is not reached, what is reached now.
+// A better estimator may tighten a bound; loosening one needs a reason in the change that does it.
+#pragma once
+
+#include <array>
+#include <string_view>
+
+namespace focusfall::accuracy {
+
+struct RegressionBound {
+  std::string_view what;     // Figure::what
+  double bound;
+};
+
+inline constexpr std::array kRegressionBounds{
+    RegressionBound{"region blur: |bias|, all c together", 3},
+    RegressionBound{"region blur: scatter, all c together", 6},
+    RegressionBound{"region blur: 95 % interval covers, at least", 90},        // of 72
+    RegressionBound{"region blur: median width / (25 % of c + .8 px)", 1},
+    RegressionBound{"flat and smooth tiles that give a number", 3.4},          // 2 of 60
+    RegressionBound{"predicted against measured: median difference", 3},
+};
+
+}  // namespace focusfall::accuracy
