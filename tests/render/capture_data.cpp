@@ -25,6 +25,15 @@ std::vector<std::uint8_t> with_capture_data(const std::vector<std::uint8_t>& jpe
   exif["Exif.Image.Make"] = data.make;
   exif["Exif.Image.Model"] = data.model;
   exif["Exif.Image.Orientation"] = static_cast<std::uint16_t>(data.orientation);
+  // What a valid Exif file holds besides (Exif 2.3, tags that JPEG requires).
+  exif["Exif.Image.XResolution"] = Exiv2::URational(72, 1);
+  exif["Exif.Image.YResolution"] = Exiv2::URational(72, 1);
+  exif["Exif.Image.ResolutionUnit"] = std::uint16_t{2};
+  exif["Exif.Image.YCbCrPositioning"] = std::uint16_t{1};
+  exif["Exif.Photo.ComponentsConfiguration"] = "1 2 3 0";
+  exif["Exif.Photo.FlashpixVersion"] = "48 49 48 48";  // "0100"
+  exif["Exif.Photo.ColorSpace"] = std::uint16_t{1};    // sRGB
+  exif["Exif.Image.ImageDescription"] = "Rendered, not photographed";
   // A time below half a second is written as 1/n, as cameras do.
   add(exif, "Exif.Photo.ExposureTime",
       data.exposure_time_s < 0.5 ? Exiv2::URational(1, static_cast<std::uint32_t>(std::lround(1 / data.exposure_time_s)))

@@ -141,7 +141,11 @@ class Tracer {
     Sequence sequence(mix(spec_.random_key * 0xD1342543DE82EF95ULL) + static_cast<std::uint64_t>(y) * 0x100000001B3ULL +
                       static_cast<std::uint64_t>(x) * 0x9E3779B97F4A7C55ULL);
     std::array<double, 3> sum{};
-    for (int i = 0; i < rays; ++i, sequence.next()) trace(x, y, sequence.at, {layers.data(), static_cast<std::size_t>(count)}, sum);
+    for (int i = 0; i < rays; ++i, sequence.next()) {
+      // Ray by ray in turn through the four images of the low-pass filter.
+      const double fx = x + spec_.low_pass_px * ((i & 1) - 0.5), fy = y + spec_.low_pass_px * ((i >> 1 & 1) - 0.5);
+      trace(fx, fy, sequence.at, {layers.data(), static_cast<std::size_t>(count)}, sum);
+    }
     const double scale = 1.0 / rays;
     return {static_cast<float>(sum[0] * scale), static_cast<float>(sum[1] * scale), static_cast<float>(sum[2] * scale)};
   }
@@ -183,7 +187,7 @@ class Tracer {
     layer.level = std::min(level, layer.prepared->surface->texture->levels() - 1);
   }
 
-  void trace(int x, int y, const std::array<double, 5>& at, std::span<const Layer> layers, std::array<double, 3>& sum) const {
+  void trace(double x, double y, const std::array<double, 5>& at, std::span<const Layer> layers, std::array<double, 3>& sum) const {
     const cv::Vec2d lens_point = lens_.opening_radius_m * disc_point(at[2], at[3]);
     float open = 1;
     for (const Layer& layer : layers) {

@@ -51,6 +51,7 @@ struct FrameSpec {
   std::vector<Surface> surfaces{};  // front to back
   cv::Vec2d camera_motion_px{0, 0}; // image motion of everything: shake, or the background of a panned frame
   double wavelength_um = 0;         // 0 = no diffraction
+  double low_pass_px = 0;           // birefringent filter before the sensor: four images of every point, so far apart
   Light air{0.5f, 0.55f, 0.6f};     // what a ray sees that meets nothing
   CameraSpec camera{};
   double exposure = 1;
@@ -74,8 +75,8 @@ struct CaptureData {
   std::string taken_at = "2026:06:14 10:00:00", subsecond = "00";
   double exposure_time_s = 0.001;
   double iso_speed = 100;
-  std::optional<double> focus_distance_m;   // Exif SubjectDistance; infinity is written as the standard's 0xffffffff
-  std::optional<cv::Rect> focus_area;       // Exif SubjectArea, px of the stored picture
+  std::optional<double> focus_distance_m{};   // Exif SubjectDistance; infinity is written as the standard's 0xffffffff
+  std::optional<cv::Rect> focus_area{};       // Exif SubjectArea, px of the stored picture
   int orientation = 1;
   bool manual_exposure = true;
 };

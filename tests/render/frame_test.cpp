@@ -105,6 +105,15 @@ TEST(Frame, MotionAddsItsLengthSquaredByTwelve) {
   EXPECT_NEAR(moments(render_linear_frame(spec)).variance, expected, 0.015 + 0.01 * expected);
 }
 
+TEST(Frame, LowPassFilterAddsAQuarterOfItsSpacingSquared) {
+  const LensSpec lens = small_frame();
+  FrameSpec spec{.lens = lens, .surfaces = {step_board(lens, 20, 4)}};
+  spec.low_pass_px = 1.2;
+  // Two images w apart have the variance w^2/4, whatever the direction with the same spacing in x and y.
+  const double expected = 1.2 * 1.2 / 4 + 1.0 / 12 + 1.0 / 96;
+  EXPECT_NEAR(moments(render_linear_frame(spec)).variance, expected, 0.015 + 0.01 * expected);
+}
+
 TEST(Frame, SignedDiscOnTheGroundIsAffineInTheFrame) {
   LensSpec lens = small_frame();
   const Surface lawn = ground(std::make_shared<MipTexture>(cv::Mat(64, 64, CV_32FC4, cv::Scalar(0.2, 0.3, 0.1, 1)), true),
@@ -181,6 +190,16 @@ TEST(Frame, BlurredOutlineLetsTheSharpBackgroundThroughByTheShareOfTheLens) {
                    billboard(std::make_shared<MipTexture>(far.picture(), false), {20, -1024 * texel, 1024 * texel, texel})};
   const double expected = disc * disc / 16 + 1.0 / 12 + 1.0 / 96;
   EXPECT_NEAR(moments(render_linear_frame(spec)).variance, expected, 0.015 + 0.02 * expected);
+}
+
+TEST(CaptureData, LeavesThePictureAsItIs) {
+  const LensSpec lens = small_frame();
+  FrameSpec spec{.lens = lens, .surfaces = {step_board(lens, 25, 2)}};
+  spec.camera.jpeg_quality = 90;
+  const Picture picture = render_frame(spec);
+  const Picture again = decode_jpeg(with_capture_data(picture.jpeg, lens, {.focus_distance_m = 20.2, .focus_area = cv::Rect(60, 40, 100, 80), .orientation = 8}));
+  EXPECT_GT(again.jpeg.size(), picture.jpeg.size() + 300);
+  EXPECT_EQ(cv::norm(picture.rgb, again.rgb, cv::NORM_INF), 0);
 }
 
 TEST(Frame, SameKeySameBytesWhateverTheThreads) {

@@ -2,6 +2,7 @@
 #include <gmock/gmock.h>
 #include <gtest/gtest.h>
 
+#include <algorithm>
 #include <cmath>
 #include <numbers>
 #include <opencv2/imgproc.hpp>
@@ -67,6 +68,42 @@ TEST(Tile, PixelApertureAloneIsNotWidenedByTheFineGrid) {
     spec.edge_angle_deg = angle;
     // Variance of a square pixel projected on any direction is 1/12.
     EXPECT_NEAR(measured_lsf_variance(render_linear_tile(spec), spec), 1.0 / 12, 0.008) << angle;
+  }
+}
+
+// The slow obvious version of one pixel of an edge: the closed form of a disc's edge spread, averaged over points of
+// the pixel and of the motion.
+double edge_pixel(const TileSpec& spec, int x, int y) {
+  const double angle = spec.edge_angle_deg * std::numbers::pi / 180, turn = spec.blur.motion_angle_deg * std::numbers::pi / 180;
+  const double centre = (spec.size_px - 1) / 2.0, radius = spec.blur.disc_px / 2;
+  constexpr int kSteps = 40;
+  const int moves = spec.blur.motion_px > 0 ? kSteps : 1;
+  double sum = 0;
+  for (int m = 0; m < moves; ++m) {
+    const double along = spec.blur.motion_px * ((m + 0.5) / moves - 0.5) * std::cos(turn - angle);
+    for (int i = 0; i < kSteps * kSteps; ++i) {
+      const double px = x - centre + (i % kSteps + 0.5) / kSteps - 0.5, py = y - centre + (i / kSteps + 0.5) / kSteps - 0.5;
+      const double u = px * std::cos(angle) + py * std::sin(angle) - along;
+      const double t = radius > 0 ? std::clamp(u / radius, -1.0, 1.0) : (u > 0 ? 1.0 : -1.0);
+      sum += 0.5 + (std::asin(t) + t * std::sqrt(1 - t * t)) / std::numbers::pi;
+    }
+  }
+  return spec.edge_low + (spec.edge_high - spec.edge_low) * sum / (moves * kSteps * kSteps);
+}
+
+TEST(Tile, PixelsOfAnEdgeAreThoseOfTheDirectIntegral) {
+  for (const BlurSpec& blur : {BlurSpec{}, BlurSpec{.disc_px = 3}, BlurSpec{.disc_px = 11}, BlurSpec{.disc_px = 4, .motion_px = 7, .motion_angle_deg = 50}}) {
+    TileSpec spec{.size_px = 96, .texture = Texture::step_edges, .blur = blur};
+    spec.edge_angle_deg = 23;
+    const cv::Mat linear = render_linear_tile(spec);
+    double worst = 0;
+    for (int i = 0; i < 60; ++i) {
+      const int x = 36 + i % 24, y = 40 + 7 * (i % 3);
+      worst = std::max(worst, std::abs(static_cast<double>(linear.at<float>(y, x)) - edge_pixel(spec, x, y)));
+    }
+    // Bands beyond twice the sampling rate are cut on the fine grid: at most .3 % of the step rings where the pixel
+    // alone is the blur, far less behind a disc.
+    EXPECT_LT(worst, 0.003 * (spec.edge_high - spec.edge_low) + 1e-4) << "disc " << blur.disc_px << " motion " << blur.motion_px;
   }
 }
 

@@ -12,6 +12,8 @@
 namespace focusfall::render {
 namespace {
 
+// A usual filter before a Bayer mosaic, so that sharp edges show no coloured steps (judgement).
+constexpr double kLowPassPx = 0.7;
 constexpr double kAcceptableBlurPx = 2;  // 2 px of a delivered picture as wide as the frame (design of the program)
 
 // The stored frame: what orientation 8 shows turned by a quarter against the clock.
@@ -68,6 +70,8 @@ std::string make(const SampleFrame& frame, std::uint64_t key, const std::filesys
   spec.camera_motion_px = frame.camera_motion_px;
   spec.wavelength_um = frame.wavelength_um;
   spec.exposure = frame.exposure;
+  spec.low_pass_px = kLowPassPx;
+  spec.effort = frame.scene == "regatta" ? 2.5 : 1.2;  // glints are small and bright
   spec.air = {0.32f, 0.47f, 0.70f};
   if (frame.scene != "regatta") spec.air = {0, 0, 0};
   spec.random_key = key;
