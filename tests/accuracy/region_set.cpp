@@ -108,6 +108,9 @@ Figure run_flat(const SetOptions& options) {
     spec.edge_high = random.uniform(0.02, 0.95);
     const Reading reading = measure(spec, measurer);
     gave[static_cast<std::size_t>(i)] = reading.number || reading.bound;
+    if (options.list && options.tuning && (reading.number || reading.bound))
+      fmt::print(stderr, "{} level {:.2f} blur {:.1f} ISO {} JPEG {} key {}: {:.2f} [{:.2f} {:.2f}]\n", render::texture_name(texture), spec.edge_high, spec.blur.disc_px,
+                 spec.camera.iso_speed, spec.camera.jpeg_quality, spec.random_key, reading.disc, reading.low, reading.high);
   });
   double share = 0;
   for (const int g : gave) share += 100.0 * g / count;

@@ -23,10 +23,12 @@ struct Prepared {
   double height;                     // normal . origin
   cv::Vec2d motion;                  // px
   cv::Rect2d seen;                   // part of the frame it can reach, px
+  bool facing;                       // upright and square to the axis: one depth, axes along x and y
 };
 
 struct LensNumbers {
   double px_per_tangent, centre_x, centre_y, focus_m, opening_radius_m, disc_scale;
+  double tangent_per_px, per_focus_m;
 };
 
 LensNumbers numbers_of(const LensSpec& lens) {
@@ -34,7 +36,8 @@ LensNumbers numbers_of(const LensSpec& lens) {
   const double opening = lens.focal_length_mm / lens.f_number / 1000;
   const double px_per_tangent = v / (lens.pitch_um * 1e-6);
   return {px_per_tangent, (lens.width_px - 1) / 2.0, (lens.height_px - 1) / 2.0,
-          lens.focus_m,   opening / 2,               opening * px_per_tangent};
+          lens.focus_m,   opening / 2,               opening * px_per_tangent,
+          1 / px_per_tangent, 1 / lens.focus_m};
 }
 
 cv::Rect2d reach_of(const Surface& surface, const LensSpec& lens, const cv::Vec2d& motion) {
@@ -64,6 +67,7 @@ Prepared prepare(const Surface& surface, const FrameSpec& spec) {
   // The two axes are at right angles, therefore each coordinate is a plain projection.
   p.u_axis = surface.along_u / surface.along_u.dot(surface.along_u);
   p.v_axis = surface.along_v / surface.along_v.dot(surface.along_v);
+  p.facing = surface.along_u[1] == 0 && surface.along_u[2] == 0 && surface.along_v[0] == 0 && surface.along_v[2] == 0;
   p.motion = surface.motion_px + spec.camera_motion_px;
   p.seen = reach_of(surface, spec.lens, p.motion);
   return p;
@@ -78,22 +82,25 @@ std::uint64_t mix(std::uint64_t z) {
 // Five numbers in [0, 1): position in the pixel, in the lens, in time. Additive recurrence with the powers of the
 // positive root of x^6 = x + 1 (Roberts 2018, "The unreasonable effectiveness of quasirandom sequences"), shifted
 // anew for every pixel (Cranley, Patterson 1976).
+// Kept as fractions of 2^32, which wrap by themselves.
 struct Sequence {
   explicit Sequence(std::uint64_t key) {
-    for (std::size_t i = 0; i < 5; ++i) {
+    for (std::uint32_t& value : state) {
       key += 0x9E3779B97F4A7C15ULL;
-      at[i] = static_cast<double>(mix(key) >> 11) * 0x1.0p-53;
+      value = static_cast<std::uint32_t>(mix(key) >> 32);
     }
   }
   void next() {
-    static constexpr std::array<double, 5> kStep{0.8812714616335696, 0.7766393890897682, 0.6844301295853426,
-                                                 0.6031687406857282, 0.5315553977157792};
-    for (std::size_t i = 0; i < 5; ++i) {
-      at[i] += kStep[i];
-      if (at[i] >= 1) at[i] -= 1;
-    }
+    // .8812714616, .7766393891, .6844301296, .6031687407, .5315553978 of 2^32, made odd.
+    static constexpr std::array<std::uint32_t, 5> kStep{3785032107U, 3335640777U, 2939605023U, 2590590015U, 2283013049U};
+    for (std::size_t i = 0; i < 5; ++i) state[i] += kStep[i];
   }
-  std::array<double, 5> at{};
+  std::array<double, 5> at() const {
+    std::array<double, 5> values;
+    for (std::size_t i = 0; i < 5; ++i) values[i] = state[i] * 0x1.0p-32;
+    return values;
+  }
+  std::array<std::uint32_t, 5> state{};
 };
 
 // A point of the unit disc from two numbers, area kept (Shirley, Chiu 1997). The angle stays within 45 degrees of an
@@ -102,11 +109,11 @@ cv::Vec2d disc_point(double a, double b) {
   const double x = 2 * a - 1, y = 2 * b - 1;
   const bool wide = std::abs(x) > std::abs(y);
   const double radius = wide ? x : y, other = wide ? y : x;
-  if (radius == 0) return {0, 0};
-  const double t = std::numbers::pi / 4 * (other / radius), t2 = t * t;
+  // Nowhere is radius 0 but in the middle; the addend changes nothing else.
+  const double t = std::numbers::pi / 4 * (other / (radius + 1e-300)), t2 = t * t;
   const double cosine = 1 - t2 / 2 * (1 - t2 / 12 * (1 - t2 / 30 * (1 - t2 / 56)));
   const double sine = t * (1 - t2 / 6 * (1 - t2 / 20 * (1 - t2 / 42)));
-  return wide ? cv::Vec2d(radius * cosine, radius * sine) : cv::Vec2d(radius * sine, radius * cosine);
+  return {radius * (wide ? cosine : sine), radius * (wide ? sine : cosine)};
 }
 
 // A surface at one pixel: which mip level its rays read.
@@ -144,7 +151,7 @@ class Tracer {
     for (int i = 0; i < rays; ++i, sequence.next()) {
       // Ray by ray in turn through the four images of the low-pass filter.
       const double fx = x + spec_.low_pass_px * ((i & 1) - 0.5), fy = y + spec_.low_pass_px * ((i >> 1 & 1) - 0.5);
-      trace(fx, fy, sequence.at, {layers.data(), static_cast<std::size_t>(count)}, sum);
+      trace(fx, fy, sequence.at(), {layers.data(), static_cast<std::size_t>(count)}, sum);
     }
     const double scale = 1.0 / rays;
     return {static_cast<float>(sum[0] * scale), static_cast<float>(sum[1] * scale), static_cast<float>(sum[2] * scale)};
@@ -189,29 +196,34 @@ class Tracer {
 
   void trace(double x, double y, const std::array<double, 5>& at, std::span<const Layer> layers, std::array<double, 3>& sum) const {
     const cv::Vec2d lens_point = lens_.opening_radius_m * disc_point(at[2], at[3]);
+    const double px = x + at[0] - 0.5 - lens_.centre_x, py = y + at[1] - 0.5 - lens_.centre_y, time = at[4] - 0.5;
     float open = 1;
     for (const Layer& layer : layers) {
-      const Prepared& p = *layer.prepared;
-      const double px = x + at[0] - 0.5 - (at[4] - 0.5) * p.motion[0] - lens_.centre_x;
-      const double py = y + at[1] - 0.5 - (at[4] - 0.5) * p.motion[1] - lens_.centre_y;
-      // The ray leaves the lens at lens_point and meets, in the plane of focus, the ray through the middle.
-      const double dx = px / lens_.px_per_tangent - lens_point[0] / lens_.focus_m;
-      const double dy = py / lens_.px_per_tangent - lens_point[1] / lens_.focus_m;
-      const double along = p.normal[0] * dx + p.normal[1] * dy + p.normal[2];
-      const double depth = (p.height - p.normal[0] * lens_point[0] - p.normal[1] * lens_point[1]) / along;
-      if (!(depth > 0) || depth > p.surface->farthest_m) continue;
-      const cv::Vec3d& o = p.surface->origin;
-      const double hx = lens_point[0] + depth * dx - o[0], hy = lens_point[1] + depth * dy - o[1], hz = depth - o[2];
-      const double u = p.u_axis[0] * hx + p.u_axis[1] * hy + p.u_axis[2] * hz;
-      const double v = p.v_axis[0] * hx + p.v_axis[1] * hy + p.v_axis[2] * hz;
-      const Texel* texel = p.surface->texture->at(u, v, layer.level);
+      const Texel* texel = hit(layer, px - time * layer.prepared->motion[0], py - time * layer.prepared->motion[1], lens_point);
       if (texel == nullptr || (*texel)[3] <= 0) continue;
-      const float weight = open * static_cast<float>(p.surface->brightness);
+      const float weight = open * static_cast<float>(layer.prepared->surface->brightness);
       for (std::size_t i = 0; i < 3; ++i) sum[i] += static_cast<double>(weight * (*texel)[i]);
       open *= 1 - (*texel)[3];
       if (open < 1e-3f) return;
     }
     for (std::size_t i = 0; i < 3; ++i) sum[i] += static_cast<double>(open * spec_.air[i]);
+  }
+
+  // What the ray from lens_point to the place (px, py), counted from the axis, meets of one surface.
+  const Texel* hit(const Layer& layer, double px, double py, const cv::Vec2d& lens_point) const {
+    const Prepared& p = *layer.prepared;
+    const cv::Vec3d& o = p.surface->origin;
+    // The ray leaves the lens at lens_point and meets, in the plane of focus, the ray through the middle.
+    const double dx = px * lens_.tangent_per_px - lens_point[0] * lens_.per_focus_m;
+    const double dy = py * lens_.tangent_per_px - lens_point[1] * lens_.per_focus_m;
+    if (p.facing)
+      return p.surface->texture->at(p.u_axis[0] * (lens_point[0] + o[2] * dx - o[0]), p.v_axis[1] * (lens_point[1] + o[2] * dy - o[1]), layer.level);
+    const double along = p.normal[0] * dx + p.normal[1] * dy + p.normal[2];
+    const double depth = (p.height - p.normal[0] * lens_point[0] - p.normal[1] * lens_point[1]) / along;
+    if (!(depth > 0) || depth > p.surface->farthest_m) return nullptr;
+    const double hx = lens_point[0] + depth * dx - o[0], hy = lens_point[1] + depth * dy - o[1], hz = depth - o[2];
+    return p.surface->texture->at(p.u_axis[0] * hx + p.u_axis[1] * hy + p.u_axis[2] * hz,
+                                  p.v_axis[0] * hx + p.v_axis[1] * hy + p.v_axis[2] * hz, layer.level);
   }
 
   const FrameSpec& spec_;
