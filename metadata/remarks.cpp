@@ -1,0 +1,20 @@
+#include "metadata/remarks.h"
+
+#include <cmath>
+#include <fmt/format.h>
+
+namespace focusfall {
+
+std::optional<double> plausible(double value, const Plausible& limits, Remarks& remarks) {
+  if (value >= limits.least && value <= limits.greatest) return value;
+  remark_absurd(limits.name, fmt::format("{:.6g}{}", value, limits.unit),
+                fmt::format("{:g} to {:g}{}", limits.least, limits.greatest, limits.unit), remarks);
+  return std::nullopt;
+}
+
+void remark_absurd(const char* name, const std::string& seen, const std::string& expected, Remarks& remarks) {
+  remarks.push_back({kValueAbsurd, fmt::format("The file gives {} as {}; expected {}. It is taken as not known.",
+                                               name, seen, expected)});
+}
+
+}  // namespace focusfall
