@@ -22,6 +22,9 @@ constexpr float kMostResidual = 0.06f, kMostResidualSaturated = 0.12f;   // rms 
 constexpr float kLeastContrast = 10.0f;  // amplitude in standard deviations of the noise
 constexpr float kSaturatedSigma = 2.65f; // level px: wider, the 8 px window no longer holds the edge
 constexpr float kSharpestSigma = 0.45f;  // level-0 px: sharper than any optics, a hot pixel or a drawn line
+constexpr int kLeastCrowd = 3;           // crests tried before a block may be called crowded
+constexpr float kCrowdedShare = 0.5f;    // of them that pass the gates: fewer, and the block is crowded,
+constexpr float kNarrowSigma = 1.3f;     //   if half of them fit an edge narrower than this (c of some 4 px on level 1)
 constexpr int kTriesPerEdge = 2;         // crests fitted at most for each edge kept: crowded ones often fail the gates
 constexpr float kNoisePerLevel = 0.4f;   // of the noise survives each halving; .31 if it were white, more after demosaicing
 
@@ -147,6 +150,14 @@ FOCUSFALL_VECTOR int mark_crests(const float* __restrict gx, const float* __rest
   return any;
 }
 
+bool passes_gates(const EdgeFit& fit, const NoiseCurve& noise, int level) {
+  if (fit.amplitude <= 0 || std::abs(fit.offset_px) > kMostOffset) return false;
+  const bool saturated = fit.sigma_px > kSaturatedSigma;
+  if (fit.residual > (saturated ? kMostResidualSaturated : kMostResidual)) return false;
+  if (fit.amplitude < kLeastContrast * noise.at(fit.base + 0.5f * fit.amplitude)) return false;
+  return level > 0 || fit.sigma_px >= kSharpestSigma;
+}
+
 struct Crest {
   float x, y, nx, ny;   // level px; unit normal towards the bright side
   float rank;
@@ -160,11 +171,13 @@ struct LevelWindow {
   int origin_x, origin_y;    // of the level's region in the whole picture, px of the level
 };
 
-// Linear values of a level at whole coordinates, level 0 through the curve.
+// Linear values of a level at whole coordinates, level 0 through the curve. row() gives `count` values from (x, y) on,
+// in place or written to `space`.
 struct LinearPixels {
   const float* values;
   std::size_t stride;
   float operator()(int x, int y) const { return values[static_cast<std::size_t>(y) * stride + x]; }
+  const float* row(int x, int y, int, float*) const { return values + static_cast<std::size_t>(y) * stride + x; }
 };
 template <class Code>
 struct CodedPixels {
@@ -172,6 +185,11 @@ struct CodedPixels {
   std::size_t stride;
   const float* curve;
   float operator()(int x, int y) const { return curve[codes[static_cast<std::size_t>(y) * stride + x]]; }
+  const float* row(int x, int y, int count, float* space) const {
+    const Code* __restrict in = codes + static_cast<std::size_t>(y) * stride + x;
+    for (int i = 0; i < count; ++i) space[i] = curve[in[i]];
+    return space;
+  }
 };
 
 template <class Pixels>
@@ -181,26 +199,62 @@ class LevelSearch {
               EdgeSearchBuffers& buffers)
       : pixels_(pixels), window_(window), noise_(noise), codes_of_noise_(noise), options_(options), buffers_(buffers) {}
 
-  // Calls `found(crest, fit, ...)` for every edge that passes the gates, block by block.
+  // Calls `found(crest, fit)` for every edge that passes the gates, block by block.
   template <class Found>
   void run(const Found& found) {
-    for (int y = window_.y0; y < window_.y1; y += kBlock * options_.block_row_step) {
+    for (int y = window_.y0; y < window_.y1; y += kBlock) {
       const int rows = std::min(kBlock, window_.y1 - y);
-      for (int x = window_.x0; x < window_.x1; x += kPanelWidth) {
-        const int columns = std::min(kPanelWidth, window_.x1 - x);
-        fill_panel(x, y, columns, rows);
-        for (int bx = 0; bx < columns; bx += kBlock) {
-          search_block(bx, std::min(kBlock, columns - bx), rows);
-          int kept = 0;
-          for (std::size_t i = 0; i < crests_.size() && kept < options_.edges_per_block; ++i) {
-            kept += fit_crest(crests_[i], found);
-          }
+      int x = window_.x0;
+      while (x < window_.x1) {
+        const int end = panel_end(x, y, rows);
+        if (end == x) {
+          x += kBlock;
+          continue;
         }
+        fill_panel(x, y, end - x, rows);
+        for (int bx = 0; bx < end - x; bx += kBlock) {
+          search_block(bx, std::min(kBlock, end - x - bx), rows);
+          fit_block(x + bx, y, found);
+        }
+        x = end;
       }
     }
   }
 
  private:
+  // Whether any tile under the block at (x, y) is wanted.
+  bool wanted(int x, int y, int columns, int rows) const {
+    if (!options_.tiles) return true;
+    const int scale = 1 << window_.level;
+    return options_.tiles->any({(window_.origin_x + x) * scale, (window_.origin_y + y) * scale, columns * scale,
+                                rows * scale});
+  }
+
+  // End of the run of wanted blocks that starts at x, at most a panel wide; x itself if the first is not wanted.
+  int panel_end(int x, int y, int rows) const {
+    const int limit = std::min(x + kPanelWidth, window_.x1);
+    int end = x;
+    while (end < limit && wanted(end, y, std::min(kBlock, limit - end), rows)) end = std::min(end + kBlock, limit);
+    return end;
+  }
+
+  // Fits crests, best first, until the block has its share; notes blocks so crowded with fine detail that most fail.
+  template <class Found>
+  void fit_block(int x, int y, const Found& found) {
+    int kept = 0, tried = 0;
+    narrow_ = 0;
+    for (const Crest& crest : crests_) {
+      if (kept >= options_.edges_per_block) break;
+      kept += fit_crest(crest, found);
+      ++tried;
+    }
+    if (!options_.crowded || tried < kLeastCrowd || static_cast<float>(kept) >= kCrowdedShare * static_cast<float>(tried)) return;
+    if (2 * narrow_ < tried) return;
+    const int scale = 1 << window_.level;
+    options_.crowded->push_back({(window_.origin_x + x) * scale, (window_.origin_y + y) * scale, kBlock * scale,
+                                 kBlock * scale});
+  }
+
   // Gradient of the panel and one pixel around it.
   void fill_panel(int x0, int y0, int columns, int rows) {
     panel_x_ = x0;
@@ -209,7 +263,6 @@ class LevelSearch {
     const int loaded = width + 2 * kGradientReach;        // pixels a row
     const int source_rows = rows + 2 + 2 * kGradientReach;
     stride_ = width;
-    linear_stride_ = loaded;
     buffers_.linear.resize(static_cast<std::size_t>(loaded) * source_rows);
     buffers_.smooth_x.resize(static_cast<std::size_t>(width) * source_rows);
     buffers_.slope_x.resize(buffers_.smooth_x.size());
@@ -219,8 +272,8 @@ class LevelSearch {
     for (int r = 0; r < source_rows; ++r) {
       const int y = y0 - 1 - kGradientReach + r;
       const int x = x0 - 1 - kGradientReach;
-      float* linear = buffers_.linear.data() + r * linear_stride_;
-      for (int i = 0; i < loaded; ++i) linear[i] = pixels_(x + i, y);
+      const float* linear = pixels_.row(x, y, loaded, buffers_.linear.data() + r * loaded);
+      rows_[static_cast<std::size_t>(r)] = linear;
       filter_row(linear, width, buffers_.smooth_x.data() + r * stride_, buffers_.slope_x.data() + r * stride_);
     }
     for (int r = 0; r < rows + 2; ++r) {
@@ -241,7 +294,7 @@ class LevelSearch {
     for (int r = 0; r < rows; ++r) {
       const float* gx = buffers_.gradient_x.data() + (r + 1) * stride_ + bx + 1;
       const float* gy = buffers_.gradient_y.data() + (r + 1) * stride_ + bx + 1;
-      const float* value = buffers_.linear.data() + (r + 1 + kGradientReach) * linear_stride_ + bx + 1 + kGradientReach;
+      const float* value = rows_[static_cast<std::size_t>(r + 1 + kGradientReach)] + bx + 1 + kGradientReach;
       const float* squares = buffers_.square.data() + (r + 1) * stride_ + bx + 1;
       std::array<std::int32_t, kBlock> mark;
       if (!mark_crests(gx, gy, squares, stride_, value, columns, scale, mark.data())) continue;
@@ -290,13 +343,10 @@ class LevelSearch {
     gather_profile(pixels_, crest.x, crest.y, crest.nx, crest.ny, profile_);
     if (profile_.highest > kBrightestNear || profile_.lowest < kDarkestNear) return false;
     const auto fit = fit_profile(profile_);
-    if (!fit || fit->amplitude <= 0 || std::abs(fit->offset_px) > kMostOffset) return false;
-    const bool saturated = fit->sigma_px > kSaturatedSigma;
-    if (fit->residual > (saturated ? kMostResidualSaturated : kMostResidual)) return false;
-    const float middle = fit->base + 0.5f * fit->amplitude;
-    if (fit->amplitude < kLeastContrast * noise_.at(middle)) return false;
-    if (window_.level == 0 && fit->sigma_px < kSharpestSigma) return false;
-    found(crest, *fit, saturated);
+    if (!fit) return false;
+    narrow_ += fit->sigma_px < kNarrowSigma;
+    if (!passes_gates(*fit, noise_, window_.level)) return false;
+    found(crest, *fit);
     return true;
   }
 
@@ -310,7 +360,9 @@ class LevelSearch {
   EdgeSearchBuffers& buffers_;
   std::vector<Crest> crests_;
   EdgeProfile profile_;
-  int panel_x_ = 0, panel_y_ = 0, stride_ = 0, linear_stride_ = 0;
+  std::array<const float*, kBlock + 2 + 2 * kGradientReach> rows_{};   // of the panel and what its filters reach
+  int panel_x_ = 0, panel_y_ = 0, stride_ = 0;
+  int narrow_ = 0;   // crests of the block whose profile fits a narrow edge, whether it passes the gates or not
 };
 
 // The search window of one level for a region of level 0: inside the pyramid, clear of its border.
@@ -330,53 +382,96 @@ LevelWindow level_window(const Pyramid& pyramid, PixelRect region, int level) {
           pyramid.region.y >> level};
 }
 
-template <class Pixels>
-void search_level(const Pixels& pixels, const Pyramid& pyramid, const LevelWindow& window, float noise,
-                  const EdgeSearchOptions& options, EdgeSearchBuffers& buffers, std::vector<EdgeSample>& edges) {
-  if (window.x0 >= window.x1 || window.y0 >= window.y1) return;
-  const float scale = static_cast<float>(1 << window.level);
+// A sample in level-0 px from a fit at (x, y) of a level.
+EdgeSample edge_sample(const Pyramid& pyramid, int level, float x, float y, float nx, float ny, const EdgeFit& fit) {
+  const float scale = static_cast<float>(1 << level);
   const float centre = 0.5f * (scale - 1);
-  LevelSearch<Pixels>(pixels, window, noise, options, buffers)
-      .run([&](const Crest& crest, const EdgeFit& fit, bool saturated) {
-        EdgeSample edge;
-        const float x = crest.x + fit.offset_px * crest.nx, y = crest.y + fit.offset_px * crest.ny;
-        edge.x = x * scale + centre + static_cast<float>(pyramid.region.x);
-        edge.y = y * scale + centre + static_cast<float>(pyramid.region.y);
-        edge.normal_x = crest.nx;
-        edge.normal_y = crest.ny;
-        edge.squared_disc_px2 = squared_disc_of_width(window.level, fit.sigma_px);
-        edge.amplitude = fit.amplitude;
-        edge.residual = fit.residual;
-        edge.width_level_px = fit.sigma_px;
-        edge.level = static_cast<std::uint8_t>(window.level);
-        edge.saturated = saturated;
-        edges.push_back(edge);
-      });
+  EdgeSample edge;
+  edge.x = (x + fit.offset_px * nx) * scale + centre + static_cast<float>(pyramid.region.x);
+  edge.y = (y + fit.offset_px * ny) * scale + centre + static_cast<float>(pyramid.region.y);
+  edge.normal_x = nx;
+  edge.normal_y = ny;
+  edge.squared_disc_px2 = squared_disc_of_width(level, fit.sigma_px);
+  edge.amplitude = fit.amplitude;
+  edge.residual = fit.residual;
+  edge.width_level_px = fit.sigma_px;
+  edge.level = static_cast<std::uint8_t>(level);
+  edge.saturated = fit.sigma_px > kSaturatedSigma;
+  return edge;
+}
+
+float level_noise(double noise_codes, int level) {
+  return static_cast<float>(noise_codes) * std::pow(kNoisePerLevel, static_cast<float>(level));
+}
+
+// Calls `use(pixels)` with the pixels of a level; false if the pyramid has no such level.
+template <class Use>
+bool with_pixels(const Pyramid& pyramid, int level, const Use& use) {
+  const cv::Mat& codes = pyramid.picture->codes;
+  const float* curve = pyramid.picture->linear_of_code.data();
+  if (level > 0) {
+    const cv::Mat& values = pyramid.levels[static_cast<std::size_t>(level)];
+    if (values.empty()) return false;
+    use(LinearPixels{values.ptr<float>(), values.step1()});
+  } else if (codes.depth() == CV_16U) {
+    use(CodedPixels<std::uint16_t>{codes.ptr<std::uint16_t>(pyramid.region.y) + pyramid.region.x, codes.step1(), curve});
+  } else {
+    use(CodedPixels<std::uint8_t>{codes.ptr<std::uint8_t>(pyramid.region.y) + pyramid.region.x, codes.step1(), curve});
+  }
+  return true;
+}
+
+template <class Pixels>
+void refit_level0(const Pixels& pixels, const Pyramid& pyramid, double noise_codes, std::span<const EdgeSample> coarse,
+                  std::vector<EdgeSample>& edges) {
+  const NoiseCurve noise(level_noise(noise_codes, 0));
+  const int last_x = pyramid.region.width - kProfileReach - 1, last_y = pyramid.region.height - kProfileReach - 1;
+  EdgeProfile profile;
+  for (const EdgeSample& edge : coarse) {
+    const float x = edge.x - static_cast<float>(pyramid.region.x), y = edge.y - static_cast<float>(pyramid.region.y);
+    if (x < kProfileReach || y < kProfileReach || x >= static_cast<float>(last_x) || y >= static_cast<float>(last_y)) {
+      continue;
+    }
+    gather_profile(pixels, x, y, edge.normal_x, edge.normal_y, profile);
+    if (profile.highest > kBrightestNear || profile.lowest < kDarkestNear) continue;
+    const auto fit = fit_profile(profile);
+    if (fit && passes_gates(*fit, noise, 0)) {
+      edges.push_back(edge_sample(pyramid, 0, x, y, edge.normal_x, edge.normal_y, *fit));
+    }
+  }
 }
 
 }  // namespace
 
-void find_edges(const Pyramid& pyramid, PixelRect region, double noise_codes, const EdgeSearchOptions& options,
-                EdgeSearchBuffers& buffers, std::vector<EdgeSample>& edges) {
-  const cv::Mat& codes = pyramid.picture->codes;
-  const float* curve = pyramid.picture->linear_of_code.data();
-  for (int level = options.finest_level; level <= options.coarsest_level; ++level) {
-    const LevelWindow window = level_window(pyramid, region, level);
-    const float noise = static_cast<float>(noise_codes) * std::pow(kNoisePerLevel, static_cast<float>(level));
-    if (level > 0) {
-      const cv::Mat& values = pyramid.levels[static_cast<std::size_t>(level)];
-      if (values.empty()) break;
-      search_level(LinearPixels{values.ptr<float>(), values.step1()}, pyramid, window, noise, options, buffers, edges);
-    } else if (codes.depth() == CV_16U) {
-      const auto* first = codes.ptr<std::uint16_t>(pyramid.region.y) + pyramid.region.x;
-      search_level(CodedPixels<std::uint16_t>{first, codes.step1(), curve}, pyramid, window, noise, options, buffers,
-                   edges);
-    } else {
-      const auto* first = codes.ptr<std::uint8_t>(pyramid.region.y) + pyramid.region.x;
-      search_level(CodedPixels<std::uint8_t>{first, codes.step1(), curve}, pyramid, window, noise, options, buffers,
-                   edges);
+bool TileMask::any(PixelRect region) const {
+  const int x1 = std::min((region.x + region.width - 1) / tile_px, columns - 1);
+  const int y1 = std::min((region.y + region.height - 1) / tile_px, rows - 1);
+  for (int y = region.y / tile_px; y <= y1; ++y) {
+    for (int x = region.x / tile_px; x <= x1; ++x) {
+      if (wanted[static_cast<std::size_t>(y * columns + x)]) return true;
     }
   }
+  return false;
+}
+
+void find_edges(const Pyramid& pyramid, PixelRect region, double noise_codes, const EdgeSearchOptions& options,
+                EdgeSearchBuffers& buffers, std::vector<EdgeSample>& edges) {
+  for (int level = options.finest_level; level <= options.coarsest_level; ++level) {
+    const LevelWindow window = level_window(pyramid, region, level);
+    if (window.x0 >= window.x1 || window.y0 >= window.y1) continue;
+    const bool there = with_pixels(pyramid, level, [&]<class Pixels>(const Pixels& pixels) {
+      LevelSearch<Pixels>(pixels, window, level_noise(noise_codes, level), options, buffers)
+          .run([&](const Crest& crest, const EdgeFit& fit) {
+            edges.push_back(edge_sample(pyramid, level, crest.x, crest.y, crest.nx, crest.ny, fit));
+          });
+    });
+    if (!there) break;
+  }
+}
+
+void refit_edges(const Pyramid& pyramid, double noise_codes, std::span<const EdgeSample> coarse,
+                 std::vector<EdgeSample>& edges) {
+  with_pixels(pyramid, 0, [&](const auto& pixels) { refit_level0(pixels, pyramid, noise_codes, coarse, edges); });
 }
 
 }  // namespace focusfall

@@ -5,6 +5,7 @@
 #include <vector>
 
 #include "analysis/measure/edges.h"
+#include "analysis/measure/frame_search.h"
 #include "analysis/measure/motion.h"
 #include "analysis/measure/noise.h"
 #include "analysis/measure/pyramid.h"
@@ -15,10 +16,8 @@ namespace focusfall {
 namespace {
 
 constexpr int kAimEdgesPerBlock = 6;      // the aim is small: take what is there
-constexpr int kFineEdgesPerBlock = 3;     // of the whole frame on level 0, where most of the time goes
-constexpr int kCoarseEdgesPerBlock = 4;
-constexpr int kManyPixels = 6'000'000;    // from here on every second row of blocks is searched on level 0: a tile of
-                                          // 128 px still holds eight blocks
+constexpr double kAimEdges = 1500;         // of a large aim on level 0: three hundred give its blur to 1 %
+constexpr int kBlock_px = 32;              // EdgeSearchOptions::edges_per_block counts in these
 constexpr int kLeastAimEdges = 12;        // below, the aim has no evidence (measured)
 constexpr double kWidestInRegion = 0.2;   // c / side of the region: wider, soft shading passes for a blurred edge
 constexpr int kLeastBestEdges = 8;        // a tile with fewer is not taken for the sharpest; it is measured again then
@@ -67,13 +66,12 @@ struct FrameMeasurer::Buffers {
   EdgeSearchBuffers search;
   SpectralEstimator spectral;
   cv::Mat linear;
-  std::vector<EdgeSample> aim_edges, frame_edges, some;
-  std::vector<std::vector<EdgeSample>> by_tile;
+  FrameEdges frame;
+  std::vector<EdgeSample> aim_edges, some;
   double noise = 0;
 
   void measure_aim(PixelRect aim, Measurement& out);
-  void search_frame(const LumaPicture& picture);
-  TileMap tile_map(cv::Size size);
+  TileMap tile_map();
   std::optional<SharpestRegion> sharpest(const TileMap& tiles, cv::Size size);
   void measure_background(PixelRect aim, Measurement& out);
   BlurReading reading(PixelRect region, const std::vector<EdgeSample>& edges);
@@ -100,7 +98,9 @@ BlurReading FrameMeasurer::Buffers::reading(PixelRect region, const std::vector<
 // The aim: its edges on all levels, split if it holds two blurs, fused with its spectrum; and its motion.
 void FrameMeasurer::Buffers::measure_aim(PixelRect aim, Measurement& out) {
   aim_edges.clear();
-  find_edges(pyramid, aim, noise, {.edges_per_block = kAimEdgesPerBlock}, search, aim_edges);
+  const double blocks = static_cast<double>(aim.width) * aim.height / (kBlock_px * kBlock_px);
+  const int per_block = std::clamp(static_cast<int>(kAimEdges / std::max(blocks, 1.0)), 1, kAimEdgesPerBlock);
+  find_edges(pyramid, aim, noise, {.edges_per_block = per_block}, search, aim_edges);
   const std::vector<EdgeSample> sharper = sharper_group(aim_edges, aim);
   out.aim.mixed = !sharper.empty();
   if (out.aim.mixed) {
@@ -115,35 +115,18 @@ void FrameMeasurer::Buffers::measure_aim(PixelRect aim, Measurement& out) {
   if (!out.aim.mixed) out.motion = motion(aim_edges);
 }
 
-void FrameMeasurer::Buffers::search_frame(const LumaPicture& picture) {
-  const PixelRect whole{0, 0, picture.codes.cols, picture.codes.rows};
-  frame_edges.clear();
-  const int step = picture.codes.total() > kManyPixels ? 2 : 1;
-  find_edges(pyramid, whole, noise,
-             {.coarsest_level = 0, .edges_per_block = kFineEdgesPerBlock, .block_row_step = step}, search, frame_edges);
-  find_edges(pyramid, whole, noise, {.finest_level = 1, .edges_per_block = kCoarseEdgesPerBlock}, search, frame_edges);
-}
-
-TileMap FrameMeasurer::Buffers::tile_map(cv::Size size) {
+TileMap FrameMeasurer::Buffers::tile_map() {
   TileMap map;
-  map.tile_px = tile_side_px(size);
-  map.columns = (size.width + map.tile_px - 1) / map.tile_px;
-  map.rows = (size.height + map.tile_px - 1) / map.tile_px;
+  map.tile_px = frame.tile_px;
+  map.columns = frame.columns;
+  map.rows = frame.rows;
   const auto count = static_cast<std::size_t>(map.columns) * map.rows;
-  by_tile.resize(std::max(by_tile.size(), count));
-  for (auto& tile : by_tile) tile.clear();
-  const float side = static_cast<float>(map.tile_px);
-  for (const EdgeSample& edge : frame_edges) {
-    const int column = std::clamp(static_cast<int>(edge.x / side), 0, map.columns - 1);
-    const int row = std::clamp(static_cast<int>(edge.y / side), 0, map.rows - 1);
-    by_tile[static_cast<std::size_t>(row * map.columns + column)].push_back(edge);
-  }
   map.squared_disc_px2.assign(count, std::nullopt);
   map.sigma_px.assign(count, 0);
   map.edges.assign(count, 0);
   map.clipped.assign(count, 0);
   for (std::size_t i = 0; i < count; ++i) {
-    if (const auto blur = edge_blur(by_tile[i])) {
+    if (const auto blur = edge_blur(frame.by_tile[i])) {
       map.squared_disc_px2[i] = static_cast<float>(blur->squared_disc_px2);
       map.sigma_px[i] = static_cast<float>(blur->sigma_px);
       map.edges[i] = blur->edges;
@@ -180,7 +163,7 @@ std::optional<SharpestRegion> FrameMeasurer::Buffers::sharpest(const TileMap& ti
 void FrameMeasurer::Buffers::measure_background(PixelRect aim, Measurement& out) {
   const PixelRect clear = grown(aim, kBackgroundClear);
   some.clear();
-  std::copy_if(frame_edges.begin(), frame_edges.end(), std::back_inserter(some),
+  std::copy_if(frame.edges.begin(), frame.edges.end(), std::back_inserter(some),
                [&](const EdgeSample& edge) { return !inside(edge, clear); });
   out.background_motion = motion(some);
 }
@@ -203,8 +186,8 @@ Measurement FrameMeasurer::measure(const LumaPicture& picture, const MeasureRequ
   b.measure_aim(aim, out);
   if (!request.whole_frame) return out;
 
-  b.search_frame(picture);
-  TileMap tiles = b.tile_map(size);
+  search_frame(b.pyramid, b.noise, tile_side_px(size), b.search, b.frame);
+  TileMap tiles = b.tile_map();
   out.best = b.sharpest(tiles, size);
   b.measure_background(aim, out);
   if (request.keep_tiles) out.tiles = std::move(tiles);

@@ -3,6 +3,8 @@
 #include <algorithm>
 #include <cstdint>
 
+#include "analysis/measure/vector_kernel.h"
+
 namespace focusfall {
 namespace {
 
@@ -10,14 +12,14 @@ constexpr int kAlignment = 16;   // 2^(kLevels - 1): the corner of the region is
 
 // Halves a row: out[i] = (a[2i - 1] + 3 a[2i] + 3 a[2i + 1] + a[2i + 2]) / 8, edge pixels repeated.
 // `padded` has one extra sample before index 0 and at least one after the end.
-void halve_row(const float* __restrict padded, int out_width, float* __restrict out) {
+FOCUSFALL_VECTOR void halve_row(const float* __restrict padded, int out_width, float* __restrict out) {
   const float* a = padded + 1;
   for (int i = 0; i < out_width; ++i) {
     out[i] = 0.125f * (a[2 * i - 1] + 3.0f * (a[2 * i] + a[2 * i + 1]) + a[2 * i + 2]);
   }
 }
 
-void combine_rows(const float* __restrict r0, const float* __restrict r1, const float* __restrict r2,
+FOCUSFALL_VECTOR void combine_rows(const float* __restrict r0, const float* __restrict r1, const float* __restrict r2,
                   const float* __restrict r3, int width, float* __restrict out) {
   for (int i = 0; i < width; ++i) out[i] = 0.125f * (r0[i] + 3.0f * (r1[i] + r2[i]) + r3[i]);
 }

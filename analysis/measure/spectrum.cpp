@@ -21,7 +21,7 @@ constexpr double kOverlapGain = 0.6;             // independent share of half-ov
 constexpr int kLeastRings = 5;
 constexpr double kFirstDisc = 1.5, kLastDisc = 40.0, kDiscRatio = 1.03;
 constexpr double kLeastDisc = 4.0;               // smaller discs differ too little from a steeper power law
-constexpr int kMostTilesAcross = 4;              // more tiles add little and cost a transform each
+constexpr int kMostTilesAcross = 3;              // more tiles add little and cost a transform each
 
 // 2 J1(x)/x, the transform of a disc.
 double jinc(double x) { return std::abs(x) < 1e-6 ? 1.0 : 2.0 * ::j1(x) / x; }
