@@ -43,56 +43,40 @@ std::optional<EdgeFit> fit_profile(const EdgeProfile& profile);
 
 // ---- implementation of the template ----
 
+// The pixels of a strip as they are met, places relative to its middle.
+struct StripPixels {
+  static constexpr int kMost = (2 * kProfileReach + 1) * (2 * kProfileReach + 1);
+  std::array<float, kMost> dx, dy, value;
+  int count = 0;
+};
+
+// Bins the pixels that lie in |u| < half width, |t| < half length of the strip along (nx, ny).
+void bin_pixels(const StripPixels& pixels, float nx, float ny, EdgeProfile& profile);
+
 template <class Pixel>
 void gather_profile(const Pixel& pixel, float x, float y, float nx, float ny, EdgeProfile& profile) {
-  profile.weight.fill(0);
-  profile.position.fill(0);
-  profile.value.fill(0);
-  float lowest = 1e9f, highest = -1e9f;
   const int cx = static_cast<int>(x + 0.5f), cy = static_cast<int>(y + 0.5f);
-  const float half_length = std::sqrt(kProfileHalfLength2);
+  // Pixels of a row in the strip: the overlap of two intervals of dx. A normal along a lattice direction makes one of
+  // them endless.
+  constexpr float kLeast = 1e-4f;
+  const float across = 1.0f / std::max(std::abs(nx), kLeast), along = 1.0f / std::max(std::abs(ny), kLeast);
+  const float half_u = kProfileHalfWidth * across, half_t = std::sqrt(kProfileHalfLength2) * along;
+  const float middle_u = (nx < 0 ? ny : -ny) * across, middle_t = (ny < 0 ? -nx : nx) * along;   // per dy
+  StripPixels strip;
   for (int py = cy - kProfileReach; py <= cy + kProfileReach; ++py) {
     const float dy = static_cast<float>(py) - y;
-    // The part of the row that can lie in the strip; the exact test follows.
-    float first = static_cast<float>(-kProfileReach), last = static_cast<float>(kProfileReach);
-    auto clip = [&](float centre, float half, float slope) {
-      if (std::abs(slope) < 1e-3f) return;
-      const float middle = centre / slope, reach = half / std::abs(slope);
-      first = std::max(first, middle - reach);
-      last = std::min(last, middle + reach);
-    };
-    clip(-dy * ny, kProfileHalfWidth, nx);
-    clip(dy * nx, half_length, ny);
-    if (first > last) continue;
-    const int begin = std::max(static_cast<int>(std::floor(x + first)), cx - kProfileReach);
-    const int end = std::min(static_cast<int>(std::ceil(x + last)), cx + kProfileReach);
-    for (int px = begin; px <= end; ++px) {
-      const float dx = static_cast<float>(px) - x;
-      const float u = dx * nx + dy * ny;
-      const float t = dy * nx - dx * ny;
-      const float t2 = t * t;
-      if (t2 >= kProfileHalfLength2 || u <= -kProfileHalfWidth || u >= kProfileHalfWidth) continue;
-      // The weight falls along the edge, where a curved edge leaves its tangent.
-      const float q = 0.12f * t2;
-      const float w = 1.0f / (1.0f + q * (1.0f + q));
-      const float v = pixel(px, py);
-      const auto bin = static_cast<std::size_t>((u + kProfileHalfWidth) * 2.0f);
-      profile.weight[bin] += w;
-      profile.position[bin] += w * u;
-      profile.value[bin] += w * v;
-      if (u > -3.0f && u < 3.0f) {
-        lowest = v < lowest ? v : lowest;
-        highest = v > highest ? v : highest;
-      }
+    const float low = std::max({dy * middle_u - half_u, dy * middle_t - half_t, -float{kProfileReach} - 0.5f});
+    const float high = std::min({dy * middle_u + half_u, dy * middle_t + half_t, float{kProfileReach} + 0.5f});
+    const int begin = std::max(static_cast<int>(x + low + kProfileReach + 1) - kProfileReach, cx - kProfileReach);
+    const int end = std::min(static_cast<int>(x + high + kProfileReach + 1) - kProfileReach, cx + kProfileReach + 1);
+    for (int px = begin; px < end; ++px) {
+      const auto i = static_cast<std::size_t>(strip.count++);
+      strip.dx[i] = static_cast<float>(px) - x;
+      strip.dy[i] = dy;
+      strip.value[i] = pixel(px, py);
     }
   }
-  for (std::size_t i = 0; i < EdgeProfile::kBins; ++i) {
-    if (profile.weight[i] <= 0) continue;
-    profile.position[i] /= profile.weight[i];
-    profile.value[i] /= profile.weight[i];
-  }
-  profile.lowest = lowest;
-  profile.highest = highest;
+  bin_pixels(strip, nx, ny, profile);
 }
 
 }  // namespace focusfall

@@ -25,7 +25,7 @@ constexpr float kSharpestSigma = 0.45f;  // level-0 px: sharper than any optics,
 constexpr int kLeastCrowd = 3;           // crests tried before a block may be called crowded
 constexpr float kCrowdedShare = 0.5f;    // of them that pass the gates: fewer, and the block is crowded,
 constexpr float kNarrowSigma = 1.3f;     //   if half of them fit an edge narrower than this (c of some 4 px on level 1)
-constexpr int kTriesPerEdge = 2;         // crests fitted at most for each edge kept: crowded ones often fail the gates
+constexpr double kTriesPerEdge = 1.5;     // crests fitted at most for each edge kept: crowded ones often fail the gates
 constexpr float kNoisePerLevel = 0.4f;   // of the noise survives each halving; .31 if it were white, more after demosaicing
 
 // Derivative of a Gaussian and the Gaussian, standard deviation 1, 7 taps.
@@ -158,8 +158,14 @@ bool passes_gates(const EdgeFit& fit, const NoiseCurve& noise, int level) {
   return level > 0 || fit.sigma_px >= kSharpestSigma;
 }
 
+float square(float v) { return v * v; }
+
 struct Crest {
   float x, y, nx, ny;   // level px; unit normal towards the bright side
+};
+
+struct Candidate {
+  int x, y;             // pixel of the panel
   float rank;
 };
 
@@ -243,9 +249,9 @@ class LevelSearch {
   void fit_block(int x, int y, const Found& found) {
     int kept = 0, tried = 0;
     narrow_ = 0;
-    for (const Crest& crest : crests_) {
+    for (const Candidate& candidate : candidates_) {
       if (kept >= options_.edges_per_block) break;
-      kept += fit_crest(crest, found);
+      kept += fit_crest(placed(candidate), found);
       ++tried;
     }
     if (!options_.crowded || tried < kLeastCrowd || static_cast<float>(kept) >= kCrowdedShare * static_cast<float>(tried)) return;
@@ -287,7 +293,7 @@ class LevelSearch {
 
   // Crests of the gradient in one block of the panel, rationed.
   void search_block(int bx, int columns, int rows) {
-    crests_.clear();
+    candidates_.clear();
     const float least = kLeastGradient * kernel().noise_gain;
     // sigma(v)^2 = (slope noise)^2 v^(2 power); v^(2 power - 1) falls towards kDarkest, where it is taken for the mark.
     const float scale = square(least * kSlope * codes_of_noise_) * std::pow(kDarkest, 2 * kSlopePower - 1);
@@ -299,43 +305,50 @@ class LevelSearch {
       std::array<std::int32_t, kBlock> mark;
       if (!mark_crests(gx, gy, squares, stride_, value, columns, scale, mark.data())) continue;
       for (int i = 0; i < columns; ++i) {
-        if (mark[static_cast<std::size_t>(i)]) consider(gx + i, gy + i, squares + i, value[i], panel_x_ + bx + i, panel_y_ + r, least);
+        if (mark[static_cast<std::size_t>(i)]) consider(squares[i], value[i], bx + i, r, least);
       }
     }
     ration();
   }
 
-  // Places a marked crest to a fraction of a pixel, if it stands out of the noise.
-  void consider(const float* gx, const float* gy, const float* squares, float value, int x, int y, float least) {
-    const float m2 = *squares;
+  // Ranks a marked crest, if it stands out of the noise.
+  void consider(float square, float value, int x, int y, float least) {
     const float sigma = noise_.at(value);
-    if (m2 < square(least * sigma)) return;
-    const float ax = std::abs(*gx), ay = std::abs(*gy);
-    const bool along_x = ax >= ay;
-    const float f = along_x ? ay / ax : ax / ay;
-    const int sx = *gx >= 0 ? 1 : -1, sy = *gy >= 0 ? 1 : -1;
-    const std::ptrdiff_t straight = along_x ? sx : sy * stride_;
-    const std::ptrdiff_t diagonal = sx + static_cast<std::ptrdiff_t>(sy) * stride_;
-    const float ahead2 = (1 - f) * squares[straight] + f * squares[diagonal];
-    const float behind2 = (1 - f) * squares[-straight] + f * squares[-diagonal];
-
-    // Vertex of the parabola through the three magnitudes, in steps of the interpolated neighbour's distance.
-    const float m = std::sqrt(m2), ahead = std::sqrt(ahead2), behind = std::sqrt(behind2);
-    const float curvature = ahead + behind - 2 * m;
-    const float vertex = curvature < 0 ? 0.5f * (behind - ahead) / curvature : 0.0f;
-    const float step = std::sqrt(1 + f * f);
-    const float nx = *gx / m, ny = *gy / m;
-    const float shift = std::clamp(vertex, -0.5f, 0.5f) * step;
-    crests_.push_back({static_cast<float>(x) + shift * nx, static_cast<float>(y) + shift * ny, nx, ny,
-                       m / sigma * lottery(window_.origin_x + x, window_.origin_y + y, window_.level)});
+    if (square < least * least * sigma * sigma) return;
+    candidates_.push_back({x, y, std::sqrt(square) / sigma * lottery(window_.origin_x + panel_x_ + x,
+                                                                     window_.origin_y + panel_y_ + y, window_.level)});
   }
 
+  // Places a crest to a fraction of a pixel: the vertex of the parabola through the three magnitudes, in steps of the
+  // interpolated neighbour's distance.
+  Crest placed(const Candidate& candidate) const {
+    const std::ptrdiff_t at = (candidate.y + 1) * static_cast<std::ptrdiff_t>(stride_) + candidate.x + 1;
+    const float gx = buffers_.gradient_x[static_cast<std::size_t>(at)], gy = buffers_.gradient_y[static_cast<std::size_t>(at)];
+    const float* squares = buffers_.square.data() + at;
+    const float ax = std::abs(gx), ay = std::abs(gy);
+    const bool along_x = ax >= ay;
+    const float f = along_x ? ay / ax : ax / ay;
+    const int sx = gx >= 0 ? 1 : -1, sy = gy >= 0 ? 1 : -1;
+    const std::ptrdiff_t straight = along_x ? sx : sy * stride_;
+    const std::ptrdiff_t diagonal = sx + static_cast<std::ptrdiff_t>(sy) * stride_;
+    const float m = std::sqrt(squares[0]);
+    const float ahead = std::sqrt((1 - f) * squares[straight] + f * squares[diagonal]);
+    const float behind = std::sqrt((1 - f) * squares[-straight] + f * squares[-diagonal]);
+    const float curvature = ahead + behind - 2 * m;
+    const float vertex = curvature < 0 ? 0.5f * (behind - ahead) / curvature : 0.0f;
+    const float shift = std::clamp(vertex, -0.5f, 0.5f) * std::sqrt(1 + f * f);
+    const float nx = gx / m, ny = gy / m;
+    return {static_cast<float>(panel_x_ + candidate.x) + shift * nx, static_cast<float>(panel_y_ + candidate.y) + shift * ny,
+            nx, ny};
+  }
+
+  // Keeps the best, in order.
   void ration() {
-    const auto most = static_cast<std::size_t>(kTriesPerEdge * options_.edges_per_block);
-    if (crests_.size() <= most) return;
-    std::partial_sort(crests_.begin(), crests_.begin() + static_cast<std::ptrdiff_t>(most), crests_.end(),
-                      [](const Crest& a, const Crest& b) { return a.rank > b.rank; });
-    crests_.resize(most);
+    const auto most = static_cast<std::size_t>(std::ceil(kTriesPerEdge * options_.edges_per_block));
+    const std::size_t kept = std::min(most, candidates_.size());
+    std::partial_sort(candidates_.begin(), candidates_.begin() + static_cast<std::ptrdiff_t>(kept), candidates_.end(),
+                      [](const Candidate& a, const Candidate& b) { return a.rank > b.rank; });
+    candidates_.resize(kept);
   }
 
   template <class Found>
@@ -350,7 +363,6 @@ class LevelSearch {
     return true;
   }
 
-  static float square(float v) { return v * v; }
 
   const Pixels& pixels_;
   const LevelWindow window_;
@@ -358,7 +370,7 @@ class LevelSearch {
   const float codes_of_noise_;
   const EdgeSearchOptions& options_;
   EdgeSearchBuffers& buffers_;
-  std::vector<Crest> crests_;
+  std::vector<Candidate> candidates_;
   EdgeProfile profile_;
   std::array<const float*, kBlock + 2 + 2 * kGradientReach> rows_{};   // of the panel and what its filters reach
   int panel_x_ = 0, panel_y_ = 0, stride_ = 0;
@@ -422,21 +434,22 @@ bool with_pixels(const Pyramid& pyramid, int level, const Use& use) {
 }
 
 template <class Pixels>
-void refit_level0(const Pixels& pixels, const Pyramid& pyramid, double noise_codes, std::span<const EdgeSample> coarse,
-                  std::vector<EdgeSample>& edges) {
-  const NoiseCurve noise(level_noise(noise_codes, 0));
-  const int last_x = pyramid.region.width - kProfileReach - 1, last_y = pyramid.region.height - kProfileReach - 1;
+void refit_on(const Pixels& pixels, const Pyramid& pyramid, double noise_codes, int level,
+              std::span<const EdgeSample> coarse, std::vector<EdgeSample>& edges) {
+  const NoiseCurve noise(level_noise(noise_codes, level));
+  const float scale = static_cast<float>(1 << level), centre = 0.5f * (scale - 1);
+  const float last_x = static_cast<float>(pyramid.width(level) - kProfileReach - 1);
+  const float last_y = static_cast<float>(pyramid.height(level) - kProfileReach - 1);
   EdgeProfile profile;
   for (const EdgeSample& edge : coarse) {
-    const float x = edge.x - static_cast<float>(pyramid.region.x), y = edge.y - static_cast<float>(pyramid.region.y);
-    if (x < kProfileReach || y < kProfileReach || x >= static_cast<float>(last_x) || y >= static_cast<float>(last_y)) {
-      continue;
-    }
+    const float x = (edge.x - static_cast<float>(pyramid.region.x) - centre) / scale;
+    const float y = (edge.y - static_cast<float>(pyramid.region.y) - centre) / scale;
+    if (x < kProfileReach || y < kProfileReach || x >= last_x || y >= last_y) continue;
     gather_profile(pixels, x, y, edge.normal_x, edge.normal_y, profile);
     if (profile.highest > kBrightestNear || profile.lowest < kDarkestNear) continue;
     const auto fit = fit_profile(profile);
-    if (fit && passes_gates(*fit, noise, 0)) {
-      edges.push_back(edge_sample(pyramid, 0, x, y, edge.normal_x, edge.normal_y, *fit));
+    if (fit && passes_gates(*fit, noise, level)) {
+      edges.push_back(edge_sample(pyramid, level, x, y, edge.normal_x, edge.normal_y, *fit));
     }
   }
 }
@@ -469,9 +482,10 @@ void find_edges(const Pyramid& pyramid, PixelRect region, double noise_codes, co
   }
 }
 
-void refit_edges(const Pyramid& pyramid, double noise_codes, std::span<const EdgeSample> coarse,
+void refit_edges(const Pyramid& pyramid, double noise_codes, int level, std::span<const EdgeSample> coarse,
                  std::vector<EdgeSample>& edges) {
-  with_pixels(pyramid, 0, [&](const auto& pixels) { refit_level0(pixels, pyramid, noise_codes, coarse, edges); });
+  with_pixels(pyramid, level,
+              [&](const auto& pixels) { refit_on(pixels, pyramid, noise_codes, level, coarse, edges); });
 }
 
 }  // namespace focusfall

@@ -44,9 +44,9 @@ struct EdgeSearchBuffers {
 void find_edges(const Pyramid& pyramid, PixelRect region, double noise_codes, const EdgeSearchOptions& options,
                 EdgeSearchBuffers& buffers, std::vector<EdgeSample>& edges);
 
-// Fits edges that a coarser level found again on level 0, at the place and with the normal found there; appends those
+// Fits edges that a coarser level found again on `level`, at the place and with the normal found there; appends those
 // that pass the gates.
-void refit_edges(const Pyramid& pyramid, double noise_codes, std::span<const EdgeSample> coarse,
+void refit_edges(const Pyramid& pyramid, double noise_codes, int level, std::span<const EdgeSample> coarse,
                  std::vector<EdgeSample>& edges);
 
 }  // namespace focusfall

@@ -3,97 +3,150 @@
 #include <algorithm>
 #include <cstdint>
 
-#include "analysis/measure/region_blur.h"
-
 namespace focusfall {
 namespace {
 
-constexpr int kEdgesPerTile = 12;          // on level 1: twice what the blur of a tile needs
-constexpr int kCoarseEdgesPerBlock = 4;    // on levels 2 to 4, whose blocks are larger than a tile
-constexpr int kCrowdedEdgesPerBlock = 2;   // on level 0, of which four blocks make one of level 1
-constexpr int kBlock = 32;                 // px of a level
-constexpr int kEnoughEdges = 8;            // on a level that is fine enough for the blur: coarser ones are not asked
-constexpr int kLeastEdges = 6;             // from which on a median is taken
-constexpr float kSharpSigma = 1.25f;       // level-1 px, median of a tile: sharper (c below 4 px), level 0 tells more
-constexpr float kTooWideSigma = 2.3f;      // level-1 px, median of a tile: wider, a coarser level is asked
+constexpr int kFirstLevel = 2;
+constexpr int kEdgesPerTile = 10;          // on one level: nearly twice what the blur of a tile needs
+constexpr int kBlock = 32;                 // px of a level: the ration of EdgeSearchOptions counts in these
+constexpr std::size_t kEnoughEdges = 8;    // on a level that suits the blur: no other is searched
+constexpr float kSharpSigma = 1.25f;       // level px, median of a tile: sharper, the next finer level tells more
+constexpr float kTooWideSigma = 2.3f;      // level px, median of a tile: wider, a coarser level is asked
 
-// Appends what lies in `edges` from `first` on to the lists of its tiles.
-void share_out(std::size_t first, FrameEdges& out) {
-  const float side = static_cast<float>(out.tile_px);
-  for (std::size_t i = first; i < out.edges.size(); ++i) {
-    const EdgeSample& edge = out.edges[i];
-    const int column = std::clamp(static_cast<int>(edge.x / side), 0, out.columns - 1);
-    const int row = std::clamp(static_cast<int>(edge.y / side), 0, out.rows - 1);
-    out.by_tile[static_cast<std::size_t>(row * out.columns + column)].push_back(edge);
+class FrameSearch {
+ public:
+  FrameSearch(const Pyramid& pyramid, double noise_codes, EdgeSearchBuffers& buffers, FrameEdges& out)
+      : pyramid_(pyramid), noise_codes_(noise_codes), buffers_(buffers), out_(out) {}
+
+  void run() {
+    search(kFirstLevel, nullptr);
+    TileMask coarser = no_tiles(), finer = no_tiles();
+    for (std::size_t i = 0; i < tiles(); ++i) {
+      const auto& tile = out_.by_tile[i];
+      const bool wide = !tile.empty() && median_width(tile) >= kTooWideSigma;
+      const bool enough = tile.size() >= kEnoughEdges;
+      coarser.wanted[i] = wide || !enough;
+      finer.wanted[i] = !wide && !enough;
+    }
+    refit(kFirstLevel);
+    crowded_.clear();
+    search(1, &finer, &crowded_);
+    refit(1);
+    search_crowded();
+    for (int level = kFirstLevel + 1; level < Pyramid::kLevels; ++level) {
+      search(level, &coarser);
+      for (std::size_t i = 0; i < tiles(); ++i) coarser.wanted[i] = coarser.wanted[i] && !has_answer(i, level);
+    }
   }
-}
 
-float median_width(const std::vector<EdgeSample>& edges, std::vector<float>& widths) {
-  widths.clear();
-  for (const EdgeSample& edge : edges) widths.push_back(edge.width_level_px);
-  const auto middle = widths.begin() + static_cast<std::ptrdiff_t>(widths.size() / 2);
-  std::nth_element(widths.begin(), middle, widths.end());
-  return *middle;
-}
+ private:
+  std::size_t tiles() const { return static_cast<std::size_t>(out_.columns) * out_.rows; }
 
-// Level-0 blocks of the crowded level-1 blocks that lie in tiles without an answer.
-void search_crowded(const Pyramid& pyramid, double noise_codes, const std::vector<PixelRect>& crowded,
-                    EdgeSearchBuffers& buffers, FrameEdges& out) {
-  // A mask of level-1 blocks.
-  TileMask mask{.tile_px = 2 * kBlock,
-                .columns = (pyramid.region.width + 2 * kBlock - 1) / (2 * kBlock),
-                .rows = (pyramid.region.height + 2 * kBlock - 1) / (2 * kBlock),
-                .wanted = {}};
-  mask.wanted.assign(static_cast<std::size_t>(mask.columns) * mask.rows, 0);
-  for (const PixelRect& block : crowded) {
-    const int column = std::min((block.x + kBlock) / mask.tile_px, mask.columns - 1);
-    const int row = std::min((block.y + kBlock) / mask.tile_px, mask.rows - 1);
-    mask.wanted[static_cast<std::size_t>(row * mask.columns + column)] = 1;
+  TileMask no_tiles() const {
+    TileMask mask{.tile_px = out_.tile_px, .columns = out_.columns, .rows = out_.rows, .wanted = {}};
+    mask.wanted.assign(tiles(), 0);
+    return mask;
   }
-  find_edges(pyramid, pyramid.region, noise_codes,
-             {.coarsest_level = 0, .edges_per_block = kCrowdedEdgesPerBlock, .tiles = &mask}, buffers, out.edges);
-}
+
+  std::size_t tile_at(float x, float y) const {
+    const int column = std::clamp(static_cast<int>(x) / out_.tile_px, 0, out_.columns - 1);
+    const int row = std::clamp(static_cast<int>(y) / out_.tile_px, 0, out_.rows - 1);
+    return static_cast<std::size_t>(row * out_.columns + column);
+  }
+
+  // Whether the tile holds enough edges of `level`, and that level is not too fine for them.
+  bool has_answer(std::size_t tile, int level) {
+    some_.clear();
+    std::copy_if(out_.by_tile[tile].begin(), out_.by_tile[tile].end(), std::back_inserter(some_),
+                 [level](const EdgeSample& edge) { return edge.level == level; });
+    return some_.size() >= kEnoughEdges && median_width(some_) < kTooWideSigma;
+  }
+
+  // Searches one level in the wanted tiles and shares out what it finds.
+  void search(int level, const TileMask* mask, std::vector<PixelRect>* crowded = nullptr) {
+    const double block_px = kBlock << level;
+    const double share = block_px * block_px / (static_cast<double>(out_.tile_px) * out_.tile_px);
+    const std::size_t first = out_.edges.size();
+    find_edges(pyramid_, pyramid_.region, noise_codes_,
+               {.finest_level = level,
+                .coarsest_level = level,
+                .edges_per_block = std::max(static_cast<int>(kEdgesPerTile * share), 1),
+                .tiles = mask,
+                .crowded = crowded},
+               buffers_, out_.edges);
+    share_out(first);
+  }
+
+  void share_out(std::size_t first) {
+    for (std::size_t i = first; i < out_.edges.size(); ++i) {
+      out_.by_tile[tile_at(out_.edges[i].x, out_.edges[i].y)].push_back(out_.edges[i]);
+    }
+  }
+
+  // Fits the edges of `level` again one level finer wherever their tile is sharp, and so on down to level 0.
+  void refit(int level) {
+    for (; level > 0; --level) {
+      sharp_.clear();
+      for (std::size_t i = 0; i < tiles(); ++i) {
+        const std::size_t first = sharp_.size();
+        std::copy_if(out_.by_tile[i].begin(), out_.by_tile[i].end(), std::back_inserter(sharp_),
+                     [level](const EdgeSample& edge) { return edge.level == level; });
+        const std::span<const EdgeSample> here = std::span(sharp_).subspan(first);
+        if (here.empty() || median_width(here) >= kSharpSigma) sharp_.resize(first);
+      }
+      const std::size_t first = out_.edges.size();
+      refit_edges(pyramid_, noise_codes_, level - 1, sharp_, out_.edges);
+      share_out(first);
+    }
+  }
+
+  // Level 0 of crowded blocks in tiles without an answer: what level 1 could fit between its neighbours is the better
+  // measured, but some crowded tiles have nothing else.
+  void search_crowded() {
+    if (crowded_.empty()) return;
+    TileMask blocks{.tile_px = 2 * kBlock,
+                    .columns = (pyramid_.region.width + 2 * kBlock - 1) / (2 * kBlock),
+                    .rows = (pyramid_.region.height + 2 * kBlock - 1) / (2 * kBlock),
+                    .wanted = {}};
+    blocks.wanted.assign(static_cast<std::size_t>(blocks.columns) * blocks.rows, 0);
+    for (const PixelRect& block : crowded_) {
+      const int x = block.x + block.width / 2, y = block.y + block.height / 2;
+      if (out_.by_tile[tile_at(static_cast<float>(x), static_cast<float>(y))].size() >= kEnoughEdges) continue;
+      const int column = std::min(x / blocks.tile_px, blocks.columns - 1);
+      const int row = std::min(y / blocks.tile_px, blocks.rows - 1);
+      blocks.wanted[static_cast<std::size_t>(row * blocks.columns + column)] = 1;
+    }
+    search(0, &blocks);
+  }
+
+  float median_width(std::span<const EdgeSample> edges) {
+    widths_.clear();
+    for (const EdgeSample& edge : edges) widths_.push_back(edge.width_level_px);
+    const auto middle = widths_.begin() + static_cast<std::ptrdiff_t>(widths_.size() / 2);
+    std::nth_element(widths_.begin(), middle, widths_.end());
+    return *middle;
+  }
+
+  const Pyramid& pyramid_;
+  const double noise_codes_;
+  EdgeSearchBuffers& buffers_;
+  FrameEdges& out_;
+  std::vector<PixelRect> crowded_;
+  std::vector<EdgeSample> sharp_, some_;
+  std::vector<float> widths_;
+};
 
 }  // namespace
 
 void search_frame(const Pyramid& pyramid, double noise_codes, int tile_px, EdgeSearchBuffers& buffers, FrameEdges& out) {
-  const PixelRect whole = pyramid.region;
   out.tile_px = tile_px;
-  out.columns = (whole.width + tile_px - 1) / tile_px;
-  out.rows = (whole.height + tile_px - 1) / tile_px;
-  const auto count = static_cast<std::size_t>(out.columns) * out.rows;
+  out.columns = (pyramid.region.width + tile_px - 1) / tile_px;
+  out.rows = (pyramid.region.height + tile_px - 1) / tile_px;
   out.edges.clear();
+  const auto count = static_cast<std::size_t>(out.columns) * out.rows;
   if (out.by_tile.size() < count) out.by_tile.resize(count);
   for (auto& tile : out.by_tile) tile.clear();
-
-  std::vector<PixelRect> crowded;
-  const int blocks_per_tile = std::max(tile_px / (2 * kBlock), 1);
-  find_edges(pyramid, whole, noise_codes,
-             {.finest_level = 1,
-              .coarsest_level = 1,
-              .edges_per_block = kEdgesPerTile / (blocks_per_tile * blocks_per_tile),
-              .crowded = &crowded},
-             buffers, out.edges);
-  share_out(0, out);
-
-  // What each tile asks for next.
-  TileMask coarser{.tile_px = tile_px, .columns = out.columns, .rows = out.rows, .wanted = {}};
-  coarser.wanted.assign(count, 0);
-  std::vector<EdgeSample> sharp;
-  std::vector<float> widths;
-  for (std::size_t i = 0; i < count; ++i) {
-    const auto& tile = out.by_tile[i];
-    const int edges = static_cast<int>(tile.size());
-    const float median = edges >= kLeastEdges ? median_width(tile, widths) : kTooWideSigma;
-    if (edges < kEnoughEdges || median >= kTooWideSigma) coarser.wanted[i] = 1;
-    if (edges > 0 && median_width(tile, widths) < kSharpSigma) sharp.insert(sharp.end(), tile.begin(), tile.end());
-  }
-  const std::size_t before = out.edges.size();
-  refit_edges(pyramid, noise_codes, sharp, out.edges);
-  if (!crowded.empty()) search_crowded(pyramid, noise_codes, crowded, buffers, out);
-  find_edges(pyramid, whole, noise_codes,
-             {.finest_level = 2, .edges_per_block = kCoarseEdgesPerBlock, .tiles = &coarser}, buffers, out.edges);
-  share_out(before, out);
+  FrameSearch(pyramid, noise_codes, buffers, out).run();
 }
 
 }  // namespace focusfall

@@ -1,8 +1,9 @@
 // Edges of a whole frame for the tile map, the background and the plane, at a cost that a day's shoot can bear.
 //
-// Coarse to fine: level 1 is searched everywhere; a tile that turns out sharp has its edges fitted again on level 0; where
-// fine detail crowds level 1, level 0 is searched itself; levels 2 to 4 are searched only in tiles too blurred for level
-// 1. All edges of a tile go one way, so that the scatter of single edges selects nothing.
+// Coarse to fine: level 2 is searched everywhere. A tile that turns out sharp has its edges fitted again one level finer,
+// and again down to level 0; a tile in which level 2 finds too little is searched on level 1, and where fine detail crowds
+// that, on level 0; levels 3 and 4 are searched in tiles too blurred for level 2. All edges of a tile go one way, so that
+// the scatter of single edges selects nothing.
 #pragma once
 
 #include <opencv2/core.hpp>

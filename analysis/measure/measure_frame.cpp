@@ -20,6 +20,7 @@ constexpr double kAimEdges = 1500;         // of a large aim on level 0: three h
 constexpr int kBlock_px = 32;              // EdgeSearchOptions::edges_per_block counts in these
 constexpr int kLeastAimEdges = 12;        // below, the aim has no evidence (measured)
 constexpr double kWidestInRegion = 0.2;   // c / side of the region: wider, soft shading passes for a blurred edge
+constexpr double kWidestInTile = 0.33;     // the same of a tile of the map, which has edges alone and is only looked at
 constexpr int kLeastBestEdges = 8;        // a tile with fewer is not taken for the sharpest; it is measured again then
 constexpr int kBestRegionPx = 192;        // side of the sharpest region: the least that an aim has
 constexpr double kBackgroundClear = 0.25; // of the aim's size left out around it when the background is measured
@@ -126,7 +127,8 @@ TileMap FrameMeasurer::Buffers::tile_map() {
   map.edges.assign(count, 0);
   map.clipped.assign(count, 0);
   for (std::size_t i = 0; i < count; ++i) {
-    if (const auto blur = edge_blur(frame.by_tile[i])) {
+    const auto blur = edge_blur(frame.by_tile[i]);
+    if (blur && !blur->lower_bound && blur_disc_px(blur->squared_disc_px2) <= kWidestInTile * map.tile_px) {
       map.squared_disc_px2[i] = static_cast<float>(blur->squared_disc_px2);
       map.sigma_px[i] = static_cast<float>(blur->sigma_px);
       map.edges[i] = blur->edges;
