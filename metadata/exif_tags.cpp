@@ -1,8 +1,9 @@
 #include "metadata/exif_tags.h"
 
+#include <algorithm>
 #include <cmath>
 #include <exiv2/exiv2.hpp>
-#include <sstream>
+#include <map>
 
 namespace focusfall {
 namespace {
@@ -35,11 +36,10 @@ std::optional<Ratio> ratio_component(const Exiv2::Value& value, std::size_t inde
   return Ratio{static_cast<std::int64_t>((*all)[index].first), static_cast<std::int64_t>((*all)[index].second)};
 }
 
-// Undefined and byte data are kept as bytes by Exiv2.
-std::vector<std::uint8_t> copied_bytes(const Exiv2::Value& value) {
+std::vector<std::uint8_t> copied_bytes(const Exiv2::Value& value, Exiv2::ByteOrder order = Exiv2::littleEndian) {
   const auto size = static_cast<std::size_t>(value.size());
   std::vector<std::uint8_t> bytes(size);
-  if (size > 0) bytes.resize(static_cast<std::size_t>(value.copy(bytes.data(), Exiv2::littleEndian)));
+  if (size > 0) bytes.resize(static_cast<std::size_t>(value.copy(bytes.data(), order)));
   return bytes;
 }
 
@@ -54,6 +54,12 @@ std::optional<std::int64_t> byte_component(const Exiv2::Value& value, std::size_
 }
 
 }  // namespace
+
+std::optional<std::uint16_t> two_bytes(const std::vector<std::uint8_t>& bytes, std::size_t offset, bool big_endian) {
+  if (offset + 2 > bytes.size()) return std::nullopt;
+  const unsigned first = bytes[offset], second = bytes[offset + 1];
+  return static_cast<std::uint16_t>(big_endian ? first << 8 | second : second << 8 | first);
+}
 
 std::string trimmed(std::string_view text) {
   constexpr std::string_view kAround(" \t\r\n\0", 5);
@@ -134,6 +140,25 @@ std::optional<std::string> ExifTags::printed(std::string_view key) const {
     return std::nullopt;
   }
 }
+
+std::vector<std::uint8_t> ExifTags::structure(std::string_view group, std::size_t unit_bytes) const {
+  const auto order = maker_note_is_big_endian() ? Exiv2::bigEndian : Exiv2::littleEndian;
+  std::map<std::size_t, std::vector<std::uint8_t>> parts;
+  for (const Exiv2::Exifdatum& datum : data_) {
+    if (datum.groupName() == group && datum.count() > 0) {
+      parts.emplace(datum.tag() * unit_bytes, copied_bytes(datum.value(), order));
+    }
+  }
+  std::vector<std::uint8_t> whole;
+  for (const auto& [offset, bytes] : parts) {
+    if (offset > whole.size()) break;
+    if (offset < whole.size()) continue;
+    whole.insert(whole.end(), bytes.begin(), bytes.end());
+  }
+  return whole;
+}
+
+bool ExifTags::maker_note_is_big_endian() const { return text("Exif.MakerNote.ByteOrder") == "MM"; }
 
 std::vector<std::uint8_t> ExifTags::bytes(std::string_view key) const {
   const Exiv2::Value* value = find(key);

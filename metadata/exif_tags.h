@@ -49,8 +49,16 @@ class ExifTags {
   // The value as Exiv2 would print it for people ("AF-S", "300.0 mm"); for names of lenses above all.
   std::optional<std::string> printed(std::string_view key) const;
 
-  // Raw bytes of undefined or byte data; of shorts, their bytes in little-endian order.
+  // The bytes of a value; wider numbers in little-endian order.
   std::vector<std::uint8_t> bytes(std::string_view key) const;
+
+  // Makers keep structures of mixed types that Exiv2 takes apart, sometimes by the layout of another body. `structure`
+  // puts the bytes of a group ("NikonAf2") together again, each tag at the offset of its number times `unit_bytes`, in
+  // the byte order of the maker note. Nothing is made up: the structure ends before the first gap.
+  std::vector<std::uint8_t> structure(std::string_view group, std::size_t unit_bytes = 1) const;
+
+  // "II" or "MM" of the maker note, Exiv2's own statement.
+  bool maker_note_is_big_endian() const;
 
  private:
   const Exiv2::Value* find(std::string_view key) const;
@@ -58,6 +66,9 @@ class ExifTags {
   const Exiv2::ExifData& data_;
   std::unordered_map<std::string, const Exiv2::Exifdatum*> first_;
 };
+
+// The number that two bytes at `offset` hold; absent past the end.
+std::optional<std::uint16_t> two_bytes(const std::vector<std::uint8_t>& bytes, std::size_t offset, bool big_endian);
 
 // `text` without the spaces, line ends and NUL bytes around it.
 std::string trimmed(std::string_view text);

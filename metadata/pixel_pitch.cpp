@@ -73,7 +73,6 @@ std::optional<double> focal_plane_pitch(const PitchEvidence& e) {
   double pitch = *unit * static_cast<double>(ratio->denominator) / static_cast<double>(ratio->numerator);
   const auto sensor = sensor_fraction(e);
   if (!sensor) return pitch;
-  // The sensor's width is given with or without its masked border, bodies differ: the middle of the two.
   if (e.sensor_active_width_px && *e.sensor_active_width_px > 0) {
     pitch = sensor->sensor_um / *e.sensor_active_width_px;
   }
@@ -89,12 +88,20 @@ std::optional<double> equivalent_pitch(const PitchEvidence& e, DecodedSize size)
          std::hypot(size.width_px, size.height_px);
 }
 
+// Pitch by the diagonal of a 4:3 sensor. Wider pictures keep its width, squarer ones its height.
+std::optional<double> diagonal_pitch(const PitchEvidence& e, DecodedSize size) {
+  if (!e.sensor_diagonal_mm) return std::nullopt;
+  const double by_width = 0.8 * *e.sensor_diagonal_mm * 1000 / long_side(size);
+  const double by_height = 0.6 * *e.sensor_diagonal_mm * 1000 / short_side(size);
+  return std::min(by_width, by_height);
+}
+
 // Whether the picture is not the one that the camera wrote, so that its pixels are of no known size.
 bool altered(const PitchEvidence& e, Remarks& remarks) {
   // The part of the sensor that is kept is enlarged again by some cameras and not by others, and the equivalent takes
   // it in or does not; which, no tag tells.
   if (e.digital_zoom && *e.digital_zoom > 1) {
-    remark_unknown(fmt::format("The camera's digital zoom was set to {:.3g}.", *e.digital_zoom), remarks);
+    remark_unknown("The camera's digital zoom was in use.", remarks);
     return true;
   }
   if (known(e.recorded) && known(e.decoded) && !same_shape(e.recorded, e.decoded)) {
@@ -123,7 +130,8 @@ std::optional<CoarseValue> pixel_pitch_um(const PitchEvidence& e, Remarks& remar
   if (!known(recorded)) return std::nullopt;
   const double to_delivered = known(e.decoded) ? long_side(recorded) / long_side(e.decoded) : 1.0;
 
-  const auto by_plane = focal_plane_pitch(e);
+  auto by_plane = focal_plane_pitch(e);
+  if (!by_plane) by_plane = diagonal_pitch(e, recorded);
   const auto by_equivalent = equivalent_pitch(e, recorded);
   if (!by_plane && !by_equivalent) return std::nullopt;
   if (altered(e, remarks)) return std::nullopt;

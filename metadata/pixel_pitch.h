@@ -10,6 +10,9 @@
 
 namespace focusfall {
 
+// A digital zoom of which only the use is recorded, not the factor.
+inline constexpr double kUnknownDigitalZoom = 65535;
+
 // Everything that bears on the pitch. Sizes: `recorded` is what the camera says it wrote, `decoded` what the decoder
 // found, 0 x 0 where either is not known.
 struct PitchEvidence {
@@ -18,6 +21,7 @@ struct PitchEvidence {
   std::optional<Ratio> focal_plane_resolution;  // FocalPlaneXResolution as written
   int focal_plane_unit = 2;                     // FocalPlaneResolutionUnit; 2, inch, is the default of the standard
   std::optional<int> sensor_active_width_px;    // maker note: columns of the sensor that make pictures
+  std::optional<double> sensor_diagonal_mm;     // maker note: of the whole sensor, 4:3
   std::optional<double> focal_length_mm;
   std::optional<double> equivalent_mm;          // FocalLengthIn35mmFilm
   std::optional<double> digital_zoom;           // DigitalZoomRatio

@@ -3,13 +3,19 @@
 #include <exiv2/exiv2.hpp>
 #include <fmt/format.h>
 
+#include <algorithm>
+#include <cmath>
 #include <limits>
 #include <mutex>
 
 #include "metadata/exif_tags.h"
+#include "metadata/focus_distance.h"
+#include "metadata/maker_notes/maker_note.h"
 #include "metadata/pixel_pitch.h"
 #include "metadata/remarks.h"
 #include "metadata/standard_exif.h"
+#include "metadata/standard_xmp.h"
+#include "metadata/xmp_tags.h"
 
 namespace focusfall {
 namespace {
@@ -51,16 +57,75 @@ ParsedFile parse(std::span<const std::byte> file, Remarks& remarks) {
   return parsed;
 }
 
+template <class T>
+void fill(OptionalSourced<T>& field, const std::optional<T>& value, Source source) {
+  if (!field && value) field = Sourced<T>{*value, source};
+}
+
+NoteContext note_context(const ExifTags& tags, DecodedSize decoded, const Capture& capture) {
+  NoteContext context{.tags = tags,
+                      .model = tags.text("Exif.Image.Model").value_or(""),
+                      .size = recorded_size(tags).value_or(decoded),
+                      .focal_length_mm = std::nullopt,
+                      .equivalent_mm = tags.real("Exif.Photo.FocalLengthIn35mmFilm"),
+                      .subject_distance_m = std::nullopt};
+  if (capture.focal_length_mm) context.focal_length_mm = capture.focal_length_mm->value;
+  if (capture.focus_distance) context.subject_distance_m = capture.focus_distance->value.value_m;
+  return context;
+}
+
+// A maker's reading of the lens is better than what Exif SubjectDistance holds, which stands in few files; a maker's
+// rough one is worse.
+void merge_focus_distance(const MakerNote& note, Capture& capture, Remarks& remarks) {
+  const auto usable = [&](const std::optional<FocusDistance>& distance) -> std::optional<FocusDistance> {
+    if (!distance || std::isinf(distance->value_m)) return distance;
+    return plausible(distance->value_m, kDistance, remarks) ? distance : std::nullopt;
+  };
+  if (const auto good = usable(note.focus_distance)) capture.focus_distance = {*good, Source::maker_note};
+  fill(capture.focus_distance, usable(note.rough_focus_distance), Source::maker_note);
+}
+
+void merge_note(const MakerNote& note, Capture& capture, Remarks& remarks) {
+  fill(capture.body_serial, note.body_serial, Source::maker_note);
+  fill(capture.lens, note.lens, Source::maker_note);
+  fill(capture.lens_serial, note.lens_serial, Source::maker_note);
+  fill(capture.sequence, note.sequence, Source::maker_note);
+  fill(capture.focus_mode, note.focus_mode, Source::maker_note);
+  fill(capture.stabiliser_on, note.stabiliser_on, Source::maker_note);
+  merge_focus_distance(note, capture, remarks);
+  for (const FractionRect& area : note.focus_areas) {
+    capture.focus_areas.push_back({area, FocusAreaKind::focus_area, Source::maker_note});
+  }
+}
+
+void derive_pitch(const ExifTags& tags, DecodedSize decoded, const MakerNote& note, CaptureReading& reading) {
+  PitchEvidence evidence = pitch_evidence(tags, decoded);
+  if (reading.capture.focal_length_mm) evidence.focal_length_mm = reading.capture.focal_length_mm->value;
+  evidence.sensor_active_width_px = note.sensor_active_width_px;
+  evidence.sensor_diagonal_mm = note.sensor_diagonal_mm;
+  evidence.reduced_by_camera = note.reduced_by_camera;
+  if (note.digital_zoom && evidence.digital_zoom.value_or(0) <= 1) evidence.digital_zoom = kUnknownDigitalZoom;
+  fill(reading.capture.pixel_pitch_um, pixel_pitch_um(evidence, reading.remarks), Source::derived);
+}
+
 void interpret(const ParsedFile& parsed, DecodedSize decoded, CaptureReading& reading) {
   Capture& capture = reading.capture;
   const ExifTags tags(parsed.exif);
   read_standard_exif(tags, decoded, capture, reading.remarks);
 
-  PitchEvidence evidence = pitch_evidence(tags, decoded);
-  if (capture.focal_length_mm) evidence.focal_length_mm = capture.focal_length_mm->value;
-  if (const auto pitch = pixel_pitch_um(evidence, reading.remarks)) {
-    capture.pixel_pitch_um = Sourced<CoarseValue>{*pitch, Source::derived};
+  const NoteResult maker = read_maker_note(tags.text("Exif.Image.Make").value_or(""), note_context(tags, decoded, capture));
+  if (maker.unusable) {
+    reading.remarks.push_back({kMakerNoteUnusable, "The maker note was moved by an editor and reads as nonsense; the "
+                                                   "focus distance and the focus area in it are not used."});
   }
+  merge_note(maker.note, capture, reading.remarks);
+  read_standard_xmp(XmpTags(parsed.xmp), decoded, capture, reading.remarks);
+
+  std::ranges::stable_sort(capture.focus_areas, {}, &FocusArea::kind);
+  if (capture.focus_distance && capture.focal_length_mm) {
+    allow_for_origin(capture.focus_distance->value, capture.focal_length_mm->value);
+  }
+  derive_pitch(tags, decoded, maker.note, reading);
 }
 
 }  // namespace

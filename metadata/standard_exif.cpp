@@ -87,7 +87,10 @@ std::optional<std::string> camera_name(const ExifTags& tags) {
 
 void read_identity(const ExifTags& tags, Capture& capture) {
   set(capture.camera, camera_name(tags));
-  set(capture.lens, first_text(tags, {"Exif.Photo.LensModel"}));
+  // Bodies write "----" for a lens that does not tell its name.
+  if (auto lens = tags.text("Exif.Photo.LensModel"); lens && lens->find_first_not_of("- ") != std::string::npos) {
+    set(capture.lens, lens);
+  }
   set(capture.lens_serial, first_text(tags, {"Exif.Photo.LensSerialNumber"}));
   set(capture.body_serial, first_text(tags, {"Exif.Photo.BodySerialNumber", "Exif.Image.CameraSerialNumber"}));
   set(capture.software, first_text(tags, {"Exif.Image.Software", "Exif.Image.ProcessingSoftware"}));
@@ -242,8 +245,7 @@ void read_exposure(const ExifTags& tags, Capture& capture, Remarks& remarks) {
 
 // ---- where focus was ------------------------------------------------------------------------------------------------
 
-// Exif 2.32: numerator 0 is "unknown", 0xFFFFFFFF "infinity". The tag is read as it stands, and without a statement of
-// how coarse it is the interval is the value.
+// Exif 2.32: numerator 0 is "unknown", 0xFFFFFFFF "infinity". The interval is half a unit of the last place written.
 void read_subject_distance(const ExifTags& tags, Capture& capture, Remarks& remarks) {
   const auto ratio = tags.ratio("Exif.Photo.SubjectDistance");
   if (!ratio || ratio->numerator == 0) return;
@@ -253,7 +255,9 @@ void read_subject_distance(const ExifTags& tags, Capture& capture, Remarks& rema
     return;
   }
   if (const auto value = real_or_remark(tags, "Exif.Photo.SubjectDistance", kDistance, remarks)) {
-    capture.focus_distance = Sourced<FocusDistance>{{*value, *value, *value, false}, Source::exif};
+    const double half_unit_m = 0.5 / static_cast<double>(std::abs(ratio->denominator));
+    capture.focus_distance =
+        Sourced<FocusDistance>{{*value, std::max(0.0, *value - half_unit_m), *value + half_unit_m, false}, Source::exif};
   }
 }
 
@@ -280,6 +284,15 @@ std::optional<FractionRect> subject_box(const ExifTags& tags, const char* key, D
                       .y = (v[1] - height / 2) / size.height_px,
                       .width = width / size.width_px,
                       .height = height / size.height_px};
+}
+
+std::optional<DecodedSize> size_in(const ExifTags& tags, const std::string& width_key, const std::string& height_key) {
+  constexpr std::int64_t kLargestSide = 1 << 20;   // judgement: larger than any picture that can be decoded
+  const auto width = tags.integer(width_key), height = tags.integer(height_key);
+  if (!width || !height || *width < 1 || *height < 1 || *width > kLargestSide || *height > kLargestSide) {
+    return std::nullopt;
+  }
+  return DecodedSize{static_cast<int>(*width), static_cast<int>(*height)};
 }
 
 void read_subject_area(const ExifTags& tags, DecodedSize decoded, Capture& capture, Remarks& remarks) {
@@ -330,13 +343,14 @@ std::optional<std::string> iso_time(const std::string& exif_time, const std::str
 }
 
 std::optional<DecodedSize> recorded_size(const ExifTags& tags) {
-  const auto width = tags.integer("Exif.Photo.PixelXDimension");
-  const auto height = tags.integer("Exif.Photo.PixelYDimension");
-  constexpr std::int64_t kLargestSide = 1 << 20;   // judgement: larger than any picture that can be decoded
-  if (!width || !height || *width < 1 || *height < 1 || *width > kLargestSide || *height > kLargestSide) {
-    return std::nullopt;
+  if (const auto size = size_in(tags, "Exif.Photo.PixelXDimension", "Exif.Photo.PixelYDimension")) return size;
+  // A raw file describes its pictures one by one; NewSubfileType 0 is the one at full size (TIFF 6.0).
+  for (const char* group : {"Exif.Image.", "Exif.SubImage1.", "Exif.SubImage2.", "Exif.SubImage3.", "Exif.SubImage4."}) {
+    const std::string prefix = group;
+    if (tags.integer(prefix + "NewSubfileType") != 0) continue;
+    if (const auto size = size_in(tags, prefix + "ImageWidth", prefix + "ImageLength")) return size;
   }
-  return DecodedSize{static_cast<int>(*width), static_cast<int>(*height)};
+  return std::nullopt;
 }
 
 void read_standard_exif(const ExifTags& tags, DecodedSize decoded, Capture& capture, Remarks& remarks) {
