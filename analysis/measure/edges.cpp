@@ -21,7 +21,7 @@ constexpr float kMostOffset = 1.35f;     // px between the gradient's crest and 
 constexpr float kMostResidual = 0.06f, kMostResidualSaturated = 0.12f;   // rms / amplitude
 constexpr float kLeastContrast = 10.0f;  // amplitude in standard deviations of the noise
 constexpr float kSaturatedSigma = 2.65f; // level px: wider, the 8 px window no longer holds the edge
-constexpr float kSharpestSigma = 0.45f;  // level-0 px: sharper than any optics, a hot pixel or a drawn line
+constexpr float kSharpestSigma = 0.30f;  // level-0 px: sharper than any optics, a hot pixel or a drawn line
 constexpr int kLeastCrowd = 3;           // crests tried before a block may be called crowded
 constexpr float kCrowdedShare = 0.5f;    // of them that pass the gates: fewer, and the block is crowded,
 constexpr float kNarrowSigma = 1.3f;     //   if half of them fit an edge narrower than this (c of some 4 px on level 1)
