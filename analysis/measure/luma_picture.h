@@ -11,6 +11,9 @@ namespace focusfall {
 struct LumaPicture {
   cv::Mat codes;
   std::vector<float> linear_of_code;
+  // What a lossy coding rounds the lowest spatial frequencies to, 8-bit codes (JPEG: coding_step() of the decoder); 0:
+  // nothing was lost, or it is not known.
+  double coding_step_codes = 0;
 };
 
 // The sRGB decoding curve (IEC 61966-2-1, as in the sample code of CSS Color 4) for `code_count` equally spaced

@@ -11,6 +11,9 @@ namespace {
 
 constexpr int kTile = 32;
 constexpr double kFloorCodes = 0.35;         // judgement: what quantisation and JPEG leave
+constexpr double kCodingShare = 0.2;         // of the coding's step: one coefficient that survives alone ripples by half a
+                                             // step from crest to trough, and an edge must stand out of three such by
+                                             // ten times the noise (EdgeSearch)
 constexpr double kQuantile = 0.2;            // measured: texture fills the other tiles of most pictures
 constexpr int kMostTiles = 400;              // sampled evenly; the quantile is steady to 3 % with this many
 constexpr double kMedianToSigma = 0.6745;    // of a normal distribution
@@ -54,7 +57,7 @@ double noise_codes(const LumaPicture& picture, PixelRect region) {
   }
   auto at = medians.begin() + static_cast<std::ptrdiff_t>(kQuantile * static_cast<double>(medians.size() - 1));
   std::nth_element(medians.begin(), at, medians.end());
-  return std::max(*at / kMedianToSigma, kFloorCodes);
+  return std::max({*at / kMedianToSigma, kFloorCodes, kCodingShare * picture.coding_step_codes});
 }
 
 }  // namespace focusfall

@@ -69,6 +69,7 @@ struct PictureFormat {
   MeasuredFrom measured_from = MeasuredFrom::picture;
   Transfer transfer = Transfer::srgb_assumed;
   std::vector<float> linear_of_code{};     // for LumaPicture, 256 or 65536 entries; empty: the sRGB curve
+  double coding_step_codes = 0;            // for LumaPicture: what the coding rounds low frequencies to; 0: lossless
   std::optional<int> orientation{};        // Exif 1..8 where the container states it and overrules Exif (HEIF)
   std::vector<DecodeNote> notes{};
 };

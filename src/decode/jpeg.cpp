@@ -139,6 +139,24 @@ DecodeError JpegDecoder::row_error(unsigned row) const {
                                          row, codec_.image_height)};
 }
 
+// Mean quantiser of the luma coefficients of lowest frequency, without the constant one: of ITU-T T.81 annex A.3.3 the
+// coefficients S(u, v) with 1 <= u + v <= 3, in 8-bit codes times the 8 of that transform's scale.
+double JpegDecoder::coding_step() const {
+  const int number = codec_.comp_info[0].quant_tbl_no;
+  if (number < 0 || number >= NUM_QUANT_TBLS || codec_.quant_tbl_ptrs[number] == nullptr) return 0;
+  const UINT16* steps = codec_.quant_tbl_ptrs[number]->quantval;
+  double sum = 0;
+  int count = 0;
+  for (int v = 0; v <= 3; ++v) {
+    for (int u = 0; u + v <= 3; ++u) {
+      if (u + v == 0) continue;
+      sum += steps[v * DCTSIZE + u];
+      ++count;
+    }
+  }
+  return sum / count;
+}
+
 Decoded<PictureFormat> JpegDecoder::open(std::span<const std::byte> file) {
   jpeg_abort_decompress(&codec_);
   handler_->error_code = 0;
@@ -175,7 +193,8 @@ Decoded<PictureFormat> JpegDecoder::open(std::span<const std::byte> file) {
                        .bits = 8,
                        .channels = codec_.jpeg_color_space == JCS_GRAYSCALE ? 1 : 3,
                        .kind = "JPEG",
-                       .remarks = handler_->remarks};
+                       .remarks = handler_->remarks,
+                       .coding_step_codes = coding_step()};
 }
 
 Decoded<PictureFormat> JpegDecoder::format(std::span<const std::byte> file) { return open(file); }

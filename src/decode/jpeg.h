@@ -38,6 +38,7 @@ class JpegDecoder {
   std::optional<DecodeError> deliver_rgb(StripSink& sink);
   DecodeError error() const;
   DecodeError row_error(unsigned row) const;
+  double coding_step() const;
 
   std::unique_ptr<Handler> handler_;
   jpeg_decompress_struct codec_{};

@@ -37,6 +37,7 @@ void PictureSink::start(const PictureFormat& format) {
     luma_.linear_of_code = srgb_linear_of_code(code_count);
     curve_is_srgb_ = true;
   }
+  luma_.coding_step_codes = format.coding_step_codes;
   luma_.codes = plane(format.width_px, format.height_px, format.bits > 8 ? CV_16UC1 : CV_8UC1);
   const PixelRect aim = whole_pixels(aim_, format.width_px, format.height_px);
   clipping_.start(format.width_px, format.height_px, aim);

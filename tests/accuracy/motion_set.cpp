@@ -45,7 +45,7 @@ std::vector<Figure> run_motion(const SetOptions& options) {
     const render::Picture picture = render::render_tile(spec);
     MeasureRequest request = request_for({48, 48, 344, 344}, picture.luma.size());
     request.whole_frame = false;
-    const Measurement m = measurer.measure({picture.luma, srgb_linear_of_code(256)}, request);
+    const Measurement m = measurer.measure({picture.luma, srgb_linear_of_code(256), picture.coding_step_codes}, request);
     Reading& r = readings[static_cast<std::size_t>(i)];
     if (!m.motion) return;
     r.read = true;

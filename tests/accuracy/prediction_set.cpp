@@ -36,7 +36,7 @@ std::vector<Figure> run_predictions(const SetOptions& options) {
     const render::Picture picture = render::render_tile(spec);
     MeasureRequest request = request_for({32, 32, 256, 256}, picture.luma.size());
     request.whole_frame = false;
-    const Measurement m = measurer.measure({picture.luma, srgb_linear_of_code(256)}, request);
+    const Measurement m = measurer.measure({picture.luma, srgb_linear_of_code(256), picture.coding_step_codes}, request);
     if (m.aim_blur.estimate) measured[static_cast<std::size_t>(i)] = blur_disc_px(m.aim_blur.estimate->squared_disc_px2);
   });
   fmt::print("\nPredicted against measured on edges (polygons, ISO 100, JPEG 95), equivalent disc in px\n");

@@ -53,7 +53,7 @@ std::optional<BlurEstimate> estimate(const render::TileSpec& spec, FrameMeasurer
   MeasureRequest request = request_for({kSurrounding, kSurrounding, inner, inner}, picture.luma.size());
   request.whole_frame = false;
   request.keep_tiles = false;
-  return measurer.measure({picture.luma, srgb_linear_of_code(256)}, request).aim_blur.estimate;
+  return measurer.measure({picture.luma, srgb_linear_of_code(256), picture.coding_step_codes}, request).aim_blur.estimate;
 }
 
 Reading measure(const render::TileSpec& spec, FrameMeasurer& measurer) {

@@ -213,8 +213,21 @@ std::vector<std::uint8_t> encode_jpeg(const cv::Mat& rgb, int quality, ChromaSam
   return jpeg;
 }
 
+// Mean of the first nine alternating quantisers of table 0, which encode_jpeg writes first, 8 bits each in zigzag order
+// (ITU-T T.81, B.2.4.1: FF DB, length, precision and number, 64 values).
+static double luma_quantiser(const std::vector<std::uint8_t>& jpeg) {
+  for (std::size_t i = 0; i + 69 < jpeg.size(); ++i) {
+    if (jpeg[i] != 0xFF || jpeg[i + 1] != 0xDB || jpeg[i + 4] != 0) continue;
+    double sum = 0;
+    for (std::size_t k = 1; k <= 9; ++k) sum += jpeg[i + 5 + k];
+    return sum / 9;
+  }
+  return 0;
+}
+
 Picture decode_jpeg(std::vector<std::uint8_t> jpeg) {
   Picture picture;
+  picture.coding_step_codes = luma_quantiser(jpeg);
   if (!decode_into(jpeg, JCS_GRAYSCALE, picture.luma) || !decode_into(jpeg, JCS_RGB, picture.rgb))
     CV_Error(cv::Error::StsParseError, "the renderer's own JPEG could not be read back");
   picture.jpeg = std::move(jpeg);

@@ -33,6 +33,7 @@ NoiseModel noise_of(double iso_speed);
 struct Picture {
   cv::Mat luma;                      // CV_8UC1
   cv::Mat rgb;                       // CV_8UC3
+  double coding_step_codes = 0;      // mean luma quantiser of the nine lowest frequencies; 0 without a round trip
   std::vector<std::uint8_t> jpeg;    // the file's bytes where a round trip was asked for
 };
 
