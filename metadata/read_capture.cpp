@@ -90,6 +90,7 @@ void merge_note(const MakerNote& note, Capture& capture, Remarks& remarks) {
   fill(capture.lens, note.lens, Source::maker_note);
   fill(capture.lens_serial, note.lens_serial, Source::maker_note);
   fill(capture.sequence, note.sequence, Source::maker_note);
+  if (!capture.iso_speed && note.iso_speed) fill(capture.iso_speed, plausible(*note.iso_speed, kIsoSpeed, remarks), Source::maker_note);
   fill(capture.focus_mode, note.focus_mode, Source::maker_note);
   fill(capture.stabiliser_on, note.stabiliser_on, Source::maker_note);
   merge_focus_distance(note, capture, remarks);
@@ -119,6 +120,7 @@ void interpret(const ParsedFile& parsed, DecodedSize decoded, CaptureReading& re
                                                    "focus distance and the focus area in it are not used."});
   }
   merge_note(maker.note, capture, reading.remarks);
+  fill(capture.lens, lens_by_specification(tags), Source::exif);
   read_standard_xmp(XmpTags(parsed.xmp), decoded, capture, reading.remarks);
 
   std::ranges::stable_sort(capture.focus_areas, {}, &FocusArea::kind);

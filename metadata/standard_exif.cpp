@@ -8,7 +8,8 @@
 #include <chrono>
 #include <cmath>
 #include <cstdio>
-#include <limits>
+
+#include "metadata/focus_distance.h"
 
 namespace focusfall {
 namespace {
@@ -201,7 +202,8 @@ void read_iso_speed(const ExifTags& tags, Capture& capture, Remarks& remarks) {
 // ExposureMode: 0 automatic, 1 manual, 2 bracket. Many cameras say "manual" by ExposureProgram = 1 alone.
 void read_exposure_mode(const ExifTags& tags, Capture& capture) {
   const auto mode = tags.integer("Exif.Photo.ExposureMode");
-  const auto program = tags.integer("Exif.Photo.ExposureProgram");
+  auto program = tags.integer("Exif.Photo.ExposureProgram");
+  if (!program) program = tags.integer("Exif.Image.ExposureProgram");
   std::optional<ExposureMode> found;
   if (mode == 2) {
     found = ExposureMode::bracket;
@@ -214,7 +216,7 @@ void read_exposure_mode(const ExifTags& tags, Capture& capture) {
 }
 
 // An APEX value whose fraction is n/0, or all bits of which are set, is written for "not known" (Exif 2.32).
-std::optional<double> apex_value(const ExifTags& tags, const char* key, const Plausible& limits, Remarks& remarks) {
+std::optional<double> apex_value(const ExifTags& tags, const std::string& key, const Plausible& limits, Remarks& remarks) {
   const auto ratio = tags.ratio(key);
   if (ratio && (ratio->denominator == 0 || ratio->numerator == -1 || ratio->numerator == kAllBits) &&
       ratio->denominator <= 1 && ratio->denominator >= 0) {
@@ -232,12 +234,17 @@ void read_exposure(const ExifTags& tags, Capture& capture, Remarks& remarks) {
   read_f_number(tags, capture, remarks);
   read_exposure_time(tags, capture, remarks);
   read_iso_speed(tags, capture, remarks);
-  set(capture.exposure_bias_ev, apex_value(tags, "Exif.Photo.ExposureBiasValue", kExposureBias, remarks));
-  set(capture.brightness_apex, apex_value(tags, "Exif.Photo.BrightnessValue", kBrightness, remarks));
-  read_exposure_mode(tags, capture);
-  if (const auto flash = tags.integer("Exif.Photo.Flash")) {
-    capture.flash_fired = Sourced<bool>{(*flash & 1) != 0, Source::exif};
+  for (const std::string group : {"Exif.Photo.", "Exif.Image."}) {
+    if (!capture.exposure_bias_ev) {
+      set(capture.exposure_bias_ev, apex_value(tags, group + "ExposureBiasValue", kExposureBias, remarks));
+    }
+    if (!capture.brightness_apex) {
+      set(capture.brightness_apex, apex_value(tags, group + "BrightnessValue", kBrightness, remarks));
+    }
+    const auto flash = tags.integer(group + "Flash");
+    if (flash && !capture.flash_fired) capture.flash_fired = Sourced<bool>{(*flash & 1) != 0, Source::exif};
   }
+  read_exposure_mode(tags, capture);
   if (const auto sharpening = tags.integer("Exif.Photo.Sharpness"); sharpening >= 0 && sharpening <= 2) {
     capture.sharpening = static_cast<int>(*sharpening);
   }
@@ -247,14 +254,14 @@ void read_exposure(const ExifTags& tags, Capture& capture, Remarks& remarks) {
 
 // Exif 2.32: numerator 0 is "unknown", 0xFFFFFFFF "infinity". The interval is half a unit of the last place written.
 void read_subject_distance(const ExifTags& tags, Capture& capture, Remarks& remarks) {
-  const auto ratio = tags.ratio("Exif.Photo.SubjectDistance");
+  const char* key = tags.has("Exif.Photo.SubjectDistance") ? "Exif.Photo.SubjectDistance" : "Exif.Image.SubjectDistance";
+  const auto ratio = tags.ratio(key);
   if (!ratio || ratio->numerator == 0) return;
   if (ratio->numerator == kAllBits) {
-    constexpr double kInfinity = std::numeric_limits<double>::infinity();
-    capture.focus_distance = Sourced<FocusDistance>{{kInfinity, kInfinity, kInfinity, false}, Source::exif};
+    capture.focus_distance = Sourced<FocusDistance>{distance_at_infinity(kInfinityFromM), Source::exif};
     return;
   }
-  if (const auto value = real_or_remark(tags, "Exif.Photo.SubjectDistance", kDistance, remarks)) {
+  if (const auto value = real_or_remark(tags, key, kDistance, remarks)) {
     const double half_unit_m = 0.5 / static_cast<double>(std::abs(ratio->denominator));
     capture.focus_distance =
         Sourced<FocusDistance>{{*value, std::max(0.0, *value - half_unit_m), *value + half_unit_m, false}, Source::exif};
@@ -297,7 +304,7 @@ std::optional<DecodedSize> size_in(const ExifTags& tags, const std::string& widt
 
 void read_subject_area(const ExifTags& tags, DecodedSize decoded, Capture& capture, Remarks& remarks) {
   const DecodedSize size = recorded_size(tags).value_or(decoded);
-  for (const char* key : {"Exif.Photo.SubjectArea", "Exif.Photo.SubjectLocation"}) {
+  for (const char* key : {"Exif.Photo.SubjectArea", "Exif.Photo.SubjectLocation", "Exif.Image.SubjectLocation"}) {
     const auto box = subject_box(tags, key, size);
     if (!box || is_phone_default(*box)) continue;
     const double centre_x = box->x + box->width / 2, centre_y = box->y + box->height / 2;
@@ -340,6 +347,20 @@ std::optional<std::string> iso_time(const std::string& exif_time, const std::str
     iso += zone;
   }
   return iso;
+}
+
+std::optional<std::string> lens_by_specification(const ExifTags& tags) {
+  static constexpr const char* kKey = "Exif.Photo.LensSpecification";
+  const auto shortest = tags.real(kKey, 0), longest = tags.real(kKey, 1), at_shortest = tags.real(kKey, 2),
+             at_longest = tags.real(kKey, 3);
+  if (!shortest || !longest || *shortest <= 0 || *longest < *shortest) return std::nullopt;
+  std::string text = *shortest == *longest ? fmt::format("{:g} mm", *shortest)
+                                           : fmt::format("{:g}-{:g} mm", *shortest, *longest);
+  if (at_shortest && *at_shortest > 0) {
+    text += fmt::format(" f/{:g}", *at_shortest);
+    if (at_longest && *at_longest > *at_shortest) text += fmt::format("-{:g}", *at_longest);
+  }
+  return text;
 }
 
 std::optional<DecodedSize> recorded_size(const ExifTags& tags) {

@@ -19,4 +19,8 @@ std::optional<std::string> iso_time(const std::string& exif_time, const std::str
 // Size of the picture as the camera recorded it, long side and short side as stored; absent where it does not say.
 std::optional<DecodedSize> recorded_size(const ExifTags& tags);
 
+// "18-55 mm f/3.5-5.6" from LensSpecification, where nothing tells the name of the lens: shortest and longest focal
+// length, f-number at each, 0/0 where not known (Exif 2.32).
+std::optional<std::string> lens_by_specification(const ExifTags& tags);
+
 }  // namespace focusfall

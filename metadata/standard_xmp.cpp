@@ -81,7 +81,6 @@ void read_time(const XmpTags& tags, Capture& capture) {
 void read_approximate_distance(const XmpTags& tags, Capture& capture, Remarks& remarks) {
   constexpr double kBound = 0.1;             // judgement
   constexpr double kInfinite = 4294967295.0;  // 32 bits set
-  constexpr double kInfinityFromM = 50;      // judgement
   const auto value = tags.real("Xmp.aux.ApproximateFocusDistance");
   if (capture.focus_distance || !value || *value == 0) return;
   if (*value >= kInfinite) {

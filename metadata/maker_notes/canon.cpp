@@ -1,6 +1,8 @@
 #include <algorithm>
 #include <cmath>
 #include <cstdlib>
+#include <fmt/format.h>
+#include <limits>
 
 #include "metadata/focus_distance.h"
 #include "metadata/maker_notes/take.h"
@@ -8,8 +10,10 @@
 namespace focusfall {
 namespace {
 
-constexpr take::Code<FocusMode> kFocusModes[] = {
-    {0, FocusMode::single}, {1, FocusMode::continuous}, {3, FocusMode::manual}, {6, FocusMode::manual}};
+// 2 lets the body choose, and it does not say what it chose.
+constexpr take::Code<FocusMode> kFocusModes[] = {{0, FocusMode::single}, {1, FocusMode::continuous},
+                                                 {3, FocusMode::manual}, {4, FocusMode::single},
+                                                 {5, FocusMode::continuous}, {6, FocusMode::manual}};
 
 // The bit 0x100 is set by some bodies and changes nothing; 65535 is "not known".
 constexpr take::Code<bool> kStabiliser[] = {{0, false},  {256, false}, {1, true},   {2, true},   {3, true},
@@ -64,19 +68,26 @@ void take_distance_interval(const NoteContext& context, const char* key, MakerNo
   note.focus_distance = with_staleness(distance, context);
 }
 
-// In cm, but in mm on compacts of about 2001, which show it by the same number in Exif SubjectDistance. Little trust:
-// the interval is judgement. 0: not known; 65535 and 6553: infinity.
+// In cm, but in mm on compacts of about 2001, which show it by the same number in Exif SubjectDistance. Some bodies
+// write a second end into the next word. Little trust: the bound of a lone end is judgement. 0: not known; 65535 and
+// 6553: infinity.
 void take_subject_distance(const NoteContext& context, const char* key, MakerNote& note) {
   const auto number = context.tags.integer(key);
   if (note.rough_focus_distance || !number || *number <= 0) return;
-  constexpr double kBound = 0.3;
-  if (*number == 65535 || *number == 6553) {
-    note.rough_focus_distance = with_staleness(distance_at_infinity(65.53), context);
+  constexpr double kBound = 0.3, kInfinityFromM = 65.53;
+  const auto is_infinite = [](std::int64_t end) { return end == 65535 || end == 6553; };
+  const auto other = context.tags.integer("Exif.CanonSi.0x0014").value_or(0);
+  if (is_infinite(*number)) {
+    note.rough_focus_distance = with_staleness(distance_at_infinity(kInfinityFromM), context);
     return;
   }
   const double value = static_cast<double>(*number);
   const bool millimetres = context.subject_distance_m && std::abs(*context.subject_distance_m * 1000 - value) < 1;
-  note.rough_focus_distance = with_staleness(distance_within(value / (millimetres ? 1000 : 100), kBound), context);
+  const double unit_m = millimetres ? 0.001 : 0.01;
+  const auto distance = other > 0 && !is_infinite(other)
+                            ? distance_between(value * unit_m, static_cast<double>(other) * unit_m)
+                            : distance_within(value * unit_m, kBound);
+  note.rough_focus_distance = with_staleness(distance, context);
 }
 
 // ---- focus area -----------------------------------------------------------------------------------------------------
@@ -218,6 +229,34 @@ void take_lens_by_number(const NoteContext& context, const char* key, MakerNote&
   if (name_has_range(*name, *shortest / *units, *longest / *units)) note.lens = *name;
 }
 
+// "16-35 mm", where the lens can be changed and tells no name.
+void take_lens_range(const NoteContext& context, const char* key, MakerNote& note) {
+  const auto longest = context.tags.real(key, 0), shortest = context.tags.real(key, 1), units = context.tags.real(key, 2);
+  if (note.lens || context.model.find("EOS") == std::string::npos) return;
+  if (!longest || !shortest || !units || *units <= 0 || *shortest <= 0 || *longest < *shortest) return;
+  const double low = *shortest / *units, high = *longest / *units;
+  note.lens = low == high ? fmt::format("{:g} mm", low) : fmt::format("{:g}-{:g} mm", low, high);
+}
+
+// As it is engraved: ten digits on most bodies; the first ones print it as four hexadecimal digits and five decimal ones,
+// or as six.
+void take_serial(const NoteContext& context, const char* key, MakerNote& note) {
+  const auto number = context.tags.integer(key);
+  if (note.body_serial || !number || *number <= 0) return;
+  if (context.model.ends_with("EOS D30")) {
+    note.body_serial = fmt::format("{:04x}-{:05d}", *number >> 16, *number & 0xFFFF);
+  } else {
+    note.body_serial = fmt::format("{:0{}d}", *number, context.model.ends_with("EOS-1D") ? 6 : 10);
+  }
+}
+
+// The speed set times the gain of the automatic, both as 32nds of a stop: ISO 100/32 x 2^(v/32), and 2^(v/32).
+void take_iso_speed(const NoteContext& context, const char* key, MakerNote& note) {
+  const auto base = context.tags.integer(key), gain = context.tags.integer("Exif.CanonSi.AutoISO");
+  if (note.iso_speed || !base || *base <= 0 || !gain) return;
+  note.iso_speed = 100.0 / 32 * std::exp2(static_cast<double>(*base + *gain) / 32);
+}
+
 constexpr NoteRow kRows[] = {
     {"Exif.CanonFi.FocusDistanceUpper", take_distance_interval},
     {"Exif.CanonSi.SubjectDistance", take_subject_distance},
@@ -228,7 +267,9 @@ constexpr NoteRow kRows[] = {
     {"Exif.CanonCs.ImageStabilization", take::stabiliser<kStabiliser>},
     {"Exif.Canon.LensModel", take::text<&MakerNote::lens>},
     {"Exif.CanonCs.LensType", take_lens_by_number},
-    {"Exif.Canon.SerialNumber", take::number_as_text<&MakerNote::body_serial>},
+    {"Exif.CanonCs.Lens", take_lens_range},
+    {"Exif.Canon.SerialNumber", take_serial},
+    {"Exif.CanonSi.ISOSpeed", take_iso_speed},
     {"Exif.Canon.SensorInfo", take_sensor_width},
     {"Exif.CanonCs.ImageSize", take_image_size},
     {"Exif.CanonCs.DigitalZoom", take_digital_zoom},

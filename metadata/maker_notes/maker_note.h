@@ -20,6 +20,7 @@ struct MakerNote {
   std::optional<std::string> lens;
   std::optional<std::string> lens_serial;
   std::optional<long> sequence;
+  std::optional<double> iso_speed;
   std::optional<FocusMode> focus_mode;
   std::optional<bool> stabiliser_on;
   std::optional<FocusDistance> focus_distance;         // better than Exif SubjectDistance

@@ -14,26 +14,41 @@ void take_focus_distance(const NoteContext& context, const char* key, MakerNote&
   note.focus_distance = distance_within(static_cast<double>(ratio->numerator) / 1000, kBound);
 }
 
-// The second to the fifth fraction: left, top, right, bottom; 0/0 or all the same place with no extent is none.
-void take_selected_point(const NoteContext& context, const char* key, MakerNote& note) {
-  if (!note.focus_areas.empty()) return;
-  double v[4] = {};
-  for (std::size_t i = 0; i < 4; ++i) {
-    const auto fraction = context.tags.real(key, i + 1);
-    if (!fraction || *fraction < 0 || *fraction > 1) return;
-    v[i] = *fraction;
-  }
-  if (v[2] < v[0] || v[3] < v[1] || (v[2] == 0 && v[3] == 0)) return;
-  note.focus_areas.push_back({v[0], v[1], v[2] - v[0], v[3] - v[1]});
-}
-
-// Four bytes of each number: left, top, right, bottom in 255ths; 0 is none. The first one counts.
-void take_areas(const NoteContext& context, const char* key, MakerNote& note) {
-  const auto packed = context.tags.integer(key);
-  if (!note.focus_areas.empty() || !packed || *packed == 0) return;
+// Four bytes: left, top, right, bottom in 255ths; 0 is none. The first of the areas counts.
+std::optional<FractionRect> first_area(const ExifTags& tags) {
+  const auto packed = tags.integer("Exif.OlympusCs.AFAreas");
+  if (!packed || *packed == 0) return std::nullopt;
   const auto byte = [&](int shift) { return static_cast<double>(*packed >> shift & 0xFF) / 255; };
   const double left = byte(24), top = byte(16), right = byte(8), bottom = byte(0);
-  if (right >= left && bottom >= top) note.focus_areas.push_back({left, top, right - left, bottom - top});
+  if (right < left || bottom < top) return std::nullopt;
+  return FractionRect{left, top, right - left, bottom - top};
+}
+
+// The second to the fifth fraction: left, top, right, bottom, often of no extent; 0/0 is none.
+std::optional<FractionRect> selected_point(const ExifTags& tags) {
+  double v[4] = {};
+  for (std::size_t i = 0; i < 4; ++i) {
+    const auto fraction = tags.real("Exif.OlympusCs.AFPointSelected", i + 1);
+    if (!fraction || *fraction < 0 || *fraction > 1) return std::nullopt;
+    v[i] = *fraction;
+  }
+  if (v[2] < v[0] || v[3] < v[1] || (v[2] == 0 && v[3] == 0)) return std::nullopt;
+  return FractionRect{v[0], v[1], v[2] - v[0], v[3] - v[1]};
+}
+
+bool contains(const FractionRect& box, double x, double y) {
+  return x >= box.x && x <= box.x + box.width && y >= box.y && y <= box.y + box.height;
+}
+
+// The point that was used; the area gives it its extent where it lies in it.
+void take_focus_area(const NoteContext& context, const char*, MakerNote& note) {
+  if (!note.focus_areas.empty()) return;
+  const auto point = selected_point(context.tags), area = first_area(context.tags);
+  if (point && !(area && contains(*area, point->x + point->width / 2, point->y + point->height / 2))) {
+    note.focus_areas.push_back(*point);
+  } else if (area) {
+    note.focus_areas.push_back(*area);
+  }
 }
 
 constexpr take::Code<FocusMode> kFocusModes[] = {
@@ -47,8 +62,8 @@ void take_diagonal(const NoteContext& context, const char* key, MakerNote& note)
 
 constexpr NoteRow kRows[] = {
     {"Exif.OlympusFi.FocusDistance", take_focus_distance},
-    {"Exif.OlympusCs.AFPointSelected", take_selected_point},
-    {"Exif.OlympusCs.AFAreas", take_areas},
+    {"Exif.OlympusCs.AFPointSelected", take_focus_area},
+    {"Exif.OlympusCs.AFAreas", take_focus_area},
     {"Exif.OlympusCs.FocusMode", take::focus_mode<kFocusModes>},
     {"Exif.OlympusCs.ImageStabilization", take::stabiliser<kStabiliser>},
     {"Exif.OlympusCs.DriveMode", take::sequence<1>},

@@ -72,6 +72,8 @@ void take_focus_mode(const NoteContext& context, const char* key, MakerNote& not
 // What older compacts write; 0 is nothing.
 constexpr take::Code<FocusMode> kOldFocusModes[] = {{1, FocusMode::single}, {2, FocusMode::continuous}};
 constexpr take::Code<bool> kStabiliser[] = {{0, false}, {1, true}};
+// Compacts tell it by this tag: 1 at all times, 2 while the picture is taken.
+constexpr take::Code<bool> kAntiBlur[] = {{0, false}, {1, true}, {2, true}};
 
 constexpr NoteRow kRows[] = {
     {"Exif.Sony2Fp.FocusPosition2", take_focus_position},
@@ -79,6 +81,7 @@ constexpr NoteRow kRows[] = {
     {"Exif.Sony1.0x201b", take_focus_mode},
     {"Exif.Sony1.FocusMode", take::focus_mode<kOldFocusModes>},
     {"Exif.Sony1.ImageStabilization", take::stabiliser<kStabiliser>},
+    {"Exif.Sony1.AntiBlur", take::stabiliser<kAntiBlur>},
     {"Exif.Sony1.SequenceNumber", take::sequence<0, 65535>},
 };
 

@@ -15,13 +15,6 @@ void text(const NoteContext& context, const char* key, MakerNote& note) {
   if (!(note.*field)) note.*field = context.tags.text(key);
 }
 
-// A whole number as text: serial numbers above all. 0 is none.
-template <auto field>
-void number_as_text(const NoteContext& context, const char* key, MakerNote& note) {
-  if (note.*field) return;
-  if (const auto number = context.tags.integer(key); number && *number > 0) note.*field = std::to_string(*number);
-}
-
 // The printed name of a lens number, where Exiv2 knows it: such a name holds a focal length.
 inline void lens_by_number(const NoteContext& context, const char* key, MakerNote& note) {
   if (note.lens) return;
