@@ -9,6 +9,7 @@
 #include <mutex>
 
 #include "metadata/exif_tags.h"
+#include "metadata/focus_area.h"
 #include "metadata/focus_distance.h"
 #include "metadata/maker_notes/maker_note.h"
 #include "metadata/pixel_pitch.h"
@@ -95,7 +96,13 @@ void merge_note(const MakerNote& note, Capture& capture, Remarks& remarks) {
   fill(capture.stabiliser_on, note.stabiliser_on, Source::maker_note);
   merge_focus_distance(note, capture, remarks);
   for (const FractionRect& area : note.focus_areas) {
-    capture.focus_areas.push_back({area, FocusAreaKind::focus_area, Source::maker_note});
+    if (lies_in_frame(area)) {
+      capture.focus_areas.push_back({area, FocusAreaKind::focus_area, Source::maker_note});
+    } else {
+      remark_absurd("focus area", fmt::format("{:.3g} x {:.3g} of the frame at {:.3g}, {:.3g}", area.width, area.height,
+                                              area.x, area.y),
+                    "a place inside the frame", remarks);
+    }
   }
 }
 

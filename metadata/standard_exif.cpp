@@ -9,6 +9,7 @@
 #include <cmath>
 #include <cstdio>
 
+#include "metadata/focus_area.h"
 #include "metadata/focus_distance.h"
 
 namespace focusfall {
@@ -308,7 +309,7 @@ void read_subject_area(const ExifTags& tags, DecodedSize decoded, Capture& captu
     const auto box = subject_box(tags, key, size);
     if (!box || is_phone_default(*box)) continue;
     const double centre_x = box->x + box->width / 2, centre_y = box->y + box->height / 2;
-    if (centre_x > 1 || centre_y > 1 || box->width > 1 || box->height > 1) {
+    if (!lies_in_frame(*box)) {
       remark_absurd("subject area", fmt::format("centred at {:.3g}, {:.3g} of the frame", centre_x, centre_y),
                     "a place inside the frame", remarks);
       continue;

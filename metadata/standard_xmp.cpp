@@ -4,6 +4,7 @@
 
 #include <cmath>
 
+#include "metadata/focus_area.h"
 #include "metadata/focus_distance.h"
 #include "metadata/standard_exif.h"
 
@@ -95,13 +96,6 @@ void read_approximate_distance(const XmpTags& tags, Capture& capture, Remarks& r
 // More than anybody marks in a picture (judgement); a damaged file must not keep us busy.
 constexpr int kMostRegions = 1000;
 
-// Inside the frame, with a margin for the rounding of other programs.
-bool is_in_frame(const FractionRect& box) {
-  constexpr double kMargin = 0.02;
-  return box.width >= 0 && box.height >= 0 && box.x > -kMargin && box.y > -kMargin && box.x + box.width < 1 + kMargin &&
-         box.y + box.height < 1 + kMargin && box.width <= 1 && box.height <= 1;
-}
-
 // The regions belong to a picture of this size. One that was turned or cropped since has its regions elsewhere.
 bool applies(const XmpTags& tags, const std::string& regions, DecodedSize decoded) {
   const auto width = tags.real(regions + "/mwg-rs:AppliedToDimensions/stDim:w");
@@ -130,11 +124,11 @@ void read_mwg_regions(const XmpTags& tags, DecodedSize decoded, Capture& capture
   bool said = false;
   for (int i = 1; i <= kMostRegions; ++i) {
     const std::string region = fmt::format("{}/mwg-rs:RegionList[{}]", regions, i);
-    if (!tags.has(region) && !tags.has(region + "/mwg-rs:Type") && !tags.has(region + "/mwg-rs:Area")) break;
+    if (!tags.has(region)) break;
     const std::string type = tags.text(region + "/mwg-rs:Type").value_or("");
     if (type != "Focus" && type != "Face") continue;
     const auto area = mwg_area(tags, region);
-    if (area && is_in_frame(*area) && applies(tags, regions, decoded)) {
+    if (area && lies_in_frame(*area) && applies(tags, regions, decoded)) {
       const auto kind = type == "Focus" ? FocusAreaKind::focus_region : FocusAreaKind::face_region;
       capture.focus_areas.push_back({*area, kind, Source::xmp});
     } else if (!said) {
@@ -166,9 +160,10 @@ std::optional<FractionRect> iptc_area(const XmpTags& tags, const std::string& re
 }
 
 bool is_of_a_person(const XmpTags& tags, const std::string& region) {
-  for (const char* form : {"/Iptc4xmpExt:rCtype[1]/xmp:Identifier[1]", "/Iptc4xmpExt:rCtype[1]/Iptc4xmpExt:Name"}) {
-    const std::string type = tags.text(region + form).value_or("");
-    if (type.ends_with("/human") || type == "human" || type == "face") return true;
+  // Identifiers are a bag: Exiv2 gives one text for all of its members.
+  for (const char* form : {"/xmp:Identifier", "/xmp:Identifier[1]"}) {
+    const std::string types = tags.text(region + "/Iptc4xmpExt:rCtype[1]" + form).value_or("");
+    if (types.find("imageregiontype/human") != std::string::npos) return true;
   }
   return tags.has(region + "/Iptc4xmpExt:PersonInImage[1]");
 }
@@ -176,9 +171,9 @@ bool is_of_a_person(const XmpTags& tags, const std::string& region) {
 void read_iptc_regions(const XmpTags& tags, DecodedSize decoded, Capture& capture) {
   for (int i = 1; i <= kMostRegions; ++i) {
     const std::string region = fmt::format("Xmp.iptcExt.ImageRegion[{}]", i);
-    if (!tags.has(region) && !tags.has(region + "/Iptc4xmpExt:RegionBoundary")) break;
+    if (!tags.has(region)) break;
     const auto area = iptc_area(tags, region, decoded);
-    if (area && is_in_frame(*area) && is_of_a_person(tags, region)) {
+    if (area && lies_in_frame(*area) && is_of_a_person(tags, region)) {
       capture.focus_areas.push_back({*area, FocusAreaKind::face_region, Source::xmp});
     }
   }

@@ -20,9 +20,8 @@ std::optional<double> decimal(std::string_view text) {
 }  // namespace
 
 XmpTags::XmpTags(const Exiv2::XmpData& data) {
-  for (const Exiv2::Xmpdatum& datum : data) {
-    if (datum.count() > 0) texts_.emplace(datum.key(), datum.toString());
-  }
+  // A structure is a property without a text of its own, and is kept: it says that its members are to be looked for.
+  for (const Exiv2::Xmpdatum& datum : data) texts_.emplace(datum.key(), datum.toString());
 }
 
 std::optional<std::string> XmpTags::text(std::string_view key) const {
