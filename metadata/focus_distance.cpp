@@ -12,7 +12,8 @@ FocusDistance distance_within(double value_m, double relative_bound) {
 
 FocusDistance distance_between(double a_m, double b_m) {
   const double low = std::min(a_m, b_m), high = std::max(a_m, b_m);
-  return {2 / (1 / low + 1 / high), low, high, false};
+  // Rounding must not put the value outside two ends that are the same.
+  return {std::clamp(2 / (1 / low + 1 / high), low, high), low, high, false};
 }
 
 FocusDistance distance_at_infinity(double low_m) {

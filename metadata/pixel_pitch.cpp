@@ -12,6 +12,7 @@ namespace {
 
 // Diagonal of 24 mm x 36 mm, to which the 35 mm equivalent refers.
 constexpr double kFullFrameDiagonalMm = 43.2666;
+constexpr double kFullFrameWidthMm = 36;
 
 // Relative 95 % half widths. Measured on real files of 345 makes and models where both rules apply: the focal plane
 // resolution is right to 3 % where the 35 mm equivalent confirms it, though some bodies are wrong by up to 17 %; the
@@ -29,6 +30,8 @@ constexpr double kSameShape = 0.02;
 double long_side(DecodedSize size) { return std::max(size.width_px, size.height_px); }
 double short_side(DecodedSize size) { return std::min(size.width_px, size.height_px); }
 bool known(DecodedSize size) { return size.width_px > 0 && size.height_px > 0; }
+
+CoarseValue with_bound(double value, double bound) { return {value, value * (1 - bound), value * (1 + bound)}; }
 
 bool same_shape(DecodedSize a, DecodedSize b) {
   const double shape_a = long_side(a) / short_side(a), shape_b = long_side(b) / short_side(b);
@@ -81,11 +84,19 @@ std::optional<double> focal_plane_pitch(const PitchEvidence& e) {
 }
 
 // Pitch of the recorded pixels by the 35 mm equivalent. In a crop mode the equivalent is that of the part that was
-// recorded, and so is the diagonal.
-std::optional<double> equivalent_pitch(const PitchEvidence& e, DecodedSize size) {
+// recorded, and so is the diagonal. Makers mean the diagonal (CIPA DCG-001), or the width; for 4:3 and 3:2 that is the
+// same to 4 %, for other shapes the truth lies anywhere between: a square frame of a phone of 1.5 um pixels reads 1.33 um
+// by the diagonal.
+std::optional<CoarseValue> equivalent_pitch(const PitchEvidence& e, DecodedSize size) {
   if (!e.focal_length_mm || !e.equivalent_mm || *e.equivalent_mm <= 0 || *e.focal_length_mm <= 0) return std::nullopt;
-  return kFullFrameDiagonalMm * *e.focal_length_mm / *e.equivalent_mm * 1000 /
-         std::hypot(size.width_px, size.height_px);
+  const double scale = *e.focal_length_mm / *e.equivalent_mm * 1000;
+  const double by_diagonal = scale * kFullFrameDiagonalMm / std::hypot(size.width_px, size.height_px);
+  constexpr double kSquarest = 1.3, kWidest = 1.55;
+  const double shape = long_side(size) / short_side(size);
+  if (shape >= kSquarest && shape <= kWidest) return with_bound(by_diagonal, kEquivalentBound);
+  const double by_width = scale * kFullFrameWidthMm / long_side(size);
+  const double low = std::min(by_diagonal, by_width), high = std::max(by_diagonal, by_width);
+  return CoarseValue{(low + high) / 2, low * (1 - kEquivalentBound), high * (1 + kEquivalentBound)};
 }
 
 // Pitch by the diagonal of a 4:3 sensor. Wider pictures keep its width, squarer ones its height.
@@ -121,7 +132,11 @@ bool altered(const PitchEvidence& e, Remarks& remarks) {
   return false;
 }
 
-CoarseValue with_bound(double value, double bound) { return {value, value * (1 - bound), value * (1 + bound)}; }
+// Outside the interval of the equivalent by more than rules of the same picture are.
+bool contradict(double by_plane, const CoarseValue& by_equivalent) {
+  constexpr double kBeyond = kAgreement - kEquivalentBound;
+  return by_plane < by_equivalent.low * (1 - kBeyond) || by_plane > by_equivalent.high * (1 + kBeyond);
+}
 
 }  // namespace
 
@@ -135,16 +150,16 @@ std::optional<CoarseValue> pixel_pitch_um(const PitchEvidence& e, Remarks& remar
   const auto by_equivalent = equivalent_pitch(e, recorded);
   if (!by_plane && !by_equivalent) return std::nullopt;
   if (altered(e, remarks)) return std::nullopt;
-  if (by_plane && by_equivalent && std::abs(*by_plane / *by_equivalent - 1) > kAgreement) {
+  if (by_plane && by_equivalent && contradict(*by_plane, *by_equivalent)) {
     remark_unknown(fmt::format("The focal plane resolution gives {:.3g} um and the 35 mm equivalent {:.3g} um.",
-                               *by_plane * to_delivered, *by_equivalent * to_delivered),
+                               *by_plane * to_delivered, by_equivalent->value * to_delivered),
                    remarks);
     return std::nullopt;
   }
-  const double bound = !by_plane ? kEquivalentBound : by_equivalent || e.sensor_active_width_px ? kConfirmedBound
-                                                                                                : kUnconfirmedBound;
-  const auto pitch = plausible((by_plane ? *by_plane : *by_equivalent) * to_delivered, kPixelPitch, remarks);
-  return pitch ? std::optional(with_bound(*pitch, bound)) : std::nullopt;
+  const bool confirmed = by_equivalent || e.sensor_active_width_px;
+  CoarseValue pitch = by_plane ? with_bound(*by_plane, confirmed ? kConfirmedBound : kUnconfirmedBound) : *by_equivalent;
+  for (double* value : {&pitch.value, &pitch.low, &pitch.high}) *value *= to_delivered;
+  return plausible(pitch.value, kPixelPitch, remarks) ? std::optional(pitch) : std::nullopt;
 }
 
 PitchEvidence pitch_evidence(const ExifTags& tags, DecodedSize decoded) {

@@ -269,11 +269,17 @@ void read_subject_distance(const ExifTags& tags, Capture& capture, Remarks& rema
   }
 }
 
-// Phones write this box about the centre when nobody chose anything: 55 % x 44 % of the frame.
-bool is_phone_default(const FractionRect& box) {
+// Phones write a box about the centre when nobody chose anything: 55 % x 44 % of a 4:3 frame, and of a square cut from
+// it the same in pixels; older ones a box of 27 % x 36 %. One that somebody chose is hardly ever in the very centre.
+bool is_phone_default(const FractionRect& box, DecodedSize size, const std::string& make) {
   constexpr double kNear = 0.02;
-  return std::abs(box.width - 0.55) < kNear && std::abs(box.height - 0.44) < kNear &&
-         std::abs(box.x + box.width / 2 - 0.5) < kNear && std::abs(box.y + box.height / 2 - 0.5) < kNear;
+  const double off_x = std::abs(box.x + box.width / 2 - 0.5), off_y = std::abs(box.y + box.height / 2 - 0.5);
+  if (off_x > kNear || off_y > kNear || box.width <= 0 || box.height <= 0) return false;
+  constexpr double kDefaultHeight = 0.44, kDefaultShape = 0.55 * 4 / (0.44 * 3);
+  const double shape = box.width * size.width_px / (box.height * size.height_px);
+  if (std::abs(box.height - kDefaultHeight) < kNear && std::abs(shape / kDefaultShape - 1) < kNear) return true;
+  const bool in_very_centre = off_x * size.width_px <= 2 && off_y * size.height_px <= 2;
+  return make == "Apple" && in_very_centre;
 }
 
 // SubjectArea: two values are a point, three a circle (centre, diameter), four a box (centre, width, height).
@@ -305,9 +311,10 @@ std::optional<DecodedSize> size_in(const ExifTags& tags, const std::string& widt
 
 void read_subject_area(const ExifTags& tags, DecodedSize decoded, Capture& capture, Remarks& remarks) {
   const DecodedSize size = recorded_size(tags).value_or(decoded);
+  const std::string make = tags.text("Exif.Image.Make").value_or("");
   for (const char* key : {"Exif.Photo.SubjectArea", "Exif.Photo.SubjectLocation", "Exif.Image.SubjectLocation"}) {
     const auto box = subject_box(tags, key, size);
-    if (!box || is_phone_default(*box)) continue;
+    if (!box || is_phone_default(*box, size, make)) continue;
     const double centre_x = box->x + box->width / 2, centre_y = box->y + box->height / 2;
     if (!lies_in_frame(*box)) {
       remark_absurd("subject area", fmt::format("centred at {:.3g}, {:.3g} of the frame", centre_x, centre_y),

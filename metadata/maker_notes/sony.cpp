@@ -55,6 +55,17 @@ void take_focus_location(const NoteContext& context, const char* key, MakerNote&
   note.focus_areas.push_back({(v[2] - width / 2) / v[0], (v[3] - height / 2) / v[1], width / v[0], height / v[1]});
 }
 
+// The place of the flexible spot in a space of 640 x 480, on bodies with the E mount; it is a setting, and counts where
+// the camera focused with it (area mode 3).
+void take_flexible_spot(const NoteContext& context, const char* key, MakerNote& note) {
+  constexpr std::int64_t kFlexibleSpot = 3;
+  constexpr double kWidth = 640, kHeight = 480;
+  const auto x = context.tags.real(key, 0), y = context.tags.real(key, 1);
+  if (!note.focus_areas.empty() || note.focus_mode == FocusMode::manual || !has_e_mount(context.model) || !x || !y) return;
+  if (context.tags.integer("Exif.Sony1.0x201c") != kFlexibleSpot || *x <= 0 || *y <= 0) return;
+  if (*x < kWidth && *y < kHeight) note.focus_areas.push_back({*x / kWidth, *y / kHeight, 0, 0});
+}
+
 // ---- the rest -------------------------------------------------------------------------------------------------------
 
 // 4 and 6 let the body or a turn of the ring decide, and do not say which it was.
@@ -79,6 +90,7 @@ constexpr NoteRow kRows[] = {
     {"Exif.Sony2Fp.FocusPosition2", take_focus_position},
     {"Exif.Sony1.0x2027", take_focus_location},
     {"Exif.Sony1.0x201b", take_focus_mode},
+    {"Exif.Sony1.0x201d", take_flexible_spot},
     {"Exif.Sony1.FocusMode", take::focus_mode<kOldFocusModes>},
     {"Exif.Sony1.ImageStabilization", take::stabiliser<kStabiliser>},
     {"Exif.Sony1.AntiBlur", take::stabiliser<kAntiBlur>},

@@ -96,6 +96,18 @@ TEST(PixelPitch, DigitalZoomMakesItUnknown) {
   EXPECT_EQ(remarks.size(), 1U);
 }
 
+TEST(PixelPitch, ForUnusualShapesTheEquivalentMayMeanTheWidth) {
+  Remarks remarks;
+  // A phone of 2014: 4.15 mm, equivalent 39 mm for the square frame of 2448 px; its pixels are 1.5 um (maker's data
+  // sheet, from memory). The diagonal alone gives 1.33 um.
+  PitchEvidence evidence = with_equivalent(full_frame(), 4.15, 39);
+  evidence.recorded = evidence.decoded = {2448, 2448};
+  const auto pitch = pixel_pitch_um(evidence, remarks);
+  ASSERT_TRUE(pitch);
+  EXPECT_LT(pitch->low, 1.33);
+  EXPECT_GT(pitch->high, 1.5);
+}
+
 TEST(PixelPitch, AnUnknownEquivalentIsNone) {
   Remarks remarks;
   EXPECT_FALSE(pixel_pitch_um(with_equivalent(full_frame(), 50, 0), remarks));

@@ -146,10 +146,21 @@ TEST(StandardExif, SubjectAreasArePointsCirclesAndBoxesAboutTheirCentre) {
   EXPECT_DOUBLE_EQ(box.x, 0.45);
   EXPECT_DOUBLE_EQ(box.y, 0.2);
   EXPECT_DOUBLE_EQ(box.height, 0.1);
-  // The box that phones write when nobody chose: 55 % x 44 % about the centre.
-  EXPECT_EQ(area("3000 2000 3300 1760").x, -1);
   // Outside the frame.
   EXPECT_EQ(area("9000 2000 300 300").x, -1);
+}
+
+TEST(StandardExif, TheBoxThatPhonesWriteByDefaultIsNoSubjectArea) {
+  const auto areas = [](const char* make, const char* size_x, const char* size_y, const char* area) {
+    ExifFile file;
+    file.set("Exif.Image.Make", make).set("Exif.Photo.PixelXDimension", size_x).set("Exif.Photo.PixelYDimension", size_y);
+    return file.set("Exif.Photo.SubjectArea", area).read().capture.focus_areas.size();
+  };
+  EXPECT_EQ(areas("Apple", "4032", "3024", "2015 1511 2217 1330"), 0U);    // 55 % x 44 %
+  EXPECT_EQ(areas("other", "2448", "2448", "1223 1223 1795 1077"), 0U);    // the same of a square cut out of 3264 x 2448
+  EXPECT_EQ(areas("Apple", "3264", "2448", "1631 1223 881 881"), 0U);      // an older one
+  EXPECT_EQ(areas("Apple", "3264", "2448", "1000 1223 881 881"), 1U);      // somebody chose
+  EXPECT_EQ(areas("Camera", "3264", "2448", "1631 1223 881 881"), 1U);     // the middle point of a camera
 }
 
 TEST(StandardExif, TheSubjectAreaCountsInRecordedPixelsWhenThePictureWasReduced) {

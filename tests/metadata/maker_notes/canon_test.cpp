@@ -43,6 +43,12 @@ TEST(CanonNote, TheTwoEndsAreSorted) {
   EXPECT_LT(distance->value.low_m, distance->value.high_m);
 }
 
+TEST(CanonNote, TwoEqualEndsGiveThatDistance) {
+  const auto distance = with_distances(182, 182).read().capture.focus_distance;
+  ASSERT_TRUE(distance);
+  EXPECT_EQ(distance->value.value_m, 1.82);   // exactly: 2/(1/1.82 + 1/1.82) is one unit in the last place above
+}
+
 TEST(CanonNote, DistancesAbove327MetresAreNotNegative) {
   const auto distance = with_distances(40000, 36000).read().capture.focus_distance;
   ASSERT_TRUE(distance);

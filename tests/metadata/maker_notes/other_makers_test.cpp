@@ -116,6 +116,21 @@ TEST(SonyNote, TheFocusLocationHasTheSizeOfItsFrame) {
   EXPECT_TRUE(file.read().capture.focus_areas.empty());
 }
 
+TEST(SonyNote, TheFlexibleSpotCountsOnlyWhereTheCameraFocusedWithIt) {
+  const auto areas = [](const char* area_mode, const char* focus_mode) {
+    return file_of("SONY", "ILCE-6000")
+        .set("Exif.Sony1.0x201b", Exiv2::unsignedByte, focus_mode)
+        .set("Exif.Sony1.0x201c", Exiv2::unsignedByte, area_mode)
+        .set("Exif.Sony1.0x201d", Exiv2::unsignedShort, "160 120")
+        .read()
+        .capture.focus_areas;
+  };
+  ASSERT_EQ(areas("3", "2").size(), 1U);
+  EXPECT_DOUBLE_EQ(areas("3", "2").front().box.x, 0.25);
+  EXPECT_TRUE(areas("3", "0").empty());   // by hand
+  EXPECT_TRUE(areas("0", "2").empty());   // another area mode
+}
+
 TEST(SonyNote, CompactsDoNotMeanTheFocusModeTheyWrite) {
   const auto mode = [](const char* model, const char* code) {
     return file_of("SONY", model).set("Exif.Sony1.0x201b", Exiv2::unsignedByte, code).read().capture.focus_mode;
