@@ -21,4 +21,5 @@ cmake --build "$build"
 if [ "$accuracy" = 1 ]; then
   exec "$build/tests/accuracy/accuracy" "$@"
 fi
+bash "$top/tests/fetch_open_data.sh" "$build/open-data"
 exec ctest --test-dir "$build" --output-on-failure --no-tests=error -j "$(nproc)" "$@"
