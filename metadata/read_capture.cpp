@@ -91,7 +91,14 @@ void merge_note(const MakerNote& note, Capture& capture, Remarks& remarks) {
   fill(capture.lens, note.lens, Source::maker_note);
   fill(capture.lens_serial, note.lens_serial, Source::maker_note);
   fill(capture.sequence, note.sequence, Source::maker_note);
-  if (!capture.iso_speed && note.iso_speed) fill(capture.iso_speed, plausible(*note.iso_speed, kIsoSpeed, remarks), Source::maker_note);
+  if (!capture.iso_speed && note.iso_speed) {
+    fill(capture.iso_speed, plausible(*note.iso_speed, kIsoSpeed, remarks), Source::maker_note);
+  }
+  if (note.exposure_time_s) {
+    if (const auto time = plausible(*note.exposure_time_s, kExposureTime, remarks)) {
+      capture.exposure_time_s = {*time, Source::maker_note};
+    }
+  }
   fill(capture.focus_mode, note.focus_mode, Source::maker_note);
   fill(capture.stabiliser_on, note.stabiliser_on, Source::maker_note);
   merge_focus_distance(note, capture, remarks);

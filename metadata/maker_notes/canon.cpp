@@ -257,6 +257,21 @@ void take_iso_speed(const NoteContext& context, const char* key, MakerNote& note
   note.iso_speed = 100.0 / 32 * std::exp2(static_cast<double>(*base + *gain) / 32);
 }
 
+// 32nds of a stop, in which 12 and 20 stand for one and two thirds.
+double stops(std::int64_t code) {
+  const std::int64_t magnitude = std::abs(code), part = magnitude % 32;
+  const double fraction = part == 12 ? 32.0 / 3 : part == 20 ? 64.0 / 3 : static_cast<double>(part);
+  return (code < 0 ? -1 : 1) * (static_cast<double>(magnitude - part) + fraction) / 32;
+}
+
+// The first raw files have no Exif. What Exiv2 puts in its place is 1 s for every longer time, because it reads the
+// number without its sign.
+void take_exposure_time(const NoteContext& context, const char* key, MakerNote& note) {
+  const auto number = context.tags.integer(key);
+  if (note.exposure_time_s || !number || context.tags.has("Exif.Photo.ExifVersion")) return;
+  note.exposure_time_s = std::exp2(-stops(static_cast<std::int16_t>(*number)));
+}
+
 constexpr NoteRow kRows[] = {
     {"Exif.CanonFi.FocusDistanceUpper", take_distance_interval},
     {"Exif.CanonSi.SubjectDistance", take_subject_distance},
@@ -270,6 +285,7 @@ constexpr NoteRow kRows[] = {
     {"Exif.CanonCs.Lens", take_lens_range},
     {"Exif.Canon.SerialNumber", take_serial},
     {"Exif.CanonSi.ISOSpeed", take_iso_speed},
+    {"Exif.CanonSi.ShutterSpeedValue", take_exposure_time},
     {"Exif.Canon.SensorInfo", take_sensor_width},
     {"Exif.CanonCs.ImageSize", take_image_size},
     {"Exif.CanonCs.DigitalZoom", take_digital_zoom},

@@ -20,6 +20,7 @@ struct MakerNote {
   std::optional<std::string> lens;
   std::optional<std::string> lens_serial;
   std::optional<long> sequence;
+  std::optional<double> exposure_time_s;               // where the one in Exif is not the camera's own
   std::optional<double> iso_speed;
   std::optional<FocusMode> focus_mode;
   std::optional<bool> stabiliser_on;

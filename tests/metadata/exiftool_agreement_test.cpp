@@ -148,8 +148,9 @@ class Table {
   std::vector<std::pair<std::string, Tally>> rows_;
 };
 
-// Rationals go through decimal text in ExifTool: ten digits.
-bool same_number(double a, double b) { return std::abs(a - b) <= 1e-8 * std::max(std::abs(a), std::abs(b)); }
+// Rationals go through decimal text of ten digits in ExifTool, and the f-numbers of the first raw files through
+// fractions of half a millionth in Exiv2.
+bool same_number(double a, double b) { return std::abs(a - b) <= 2e-7 * std::max(std::abs(a), std::abs(b)); }
 
 template <class T>
 std::optional<T> plain(const OptionalSourced<T>& value) {

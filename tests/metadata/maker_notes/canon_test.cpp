@@ -253,6 +253,16 @@ TEST(CanonNote, StabiliserSerialLensAndSpeedAreRead) {
   EXPECT_FALSE(file.read().capture.stabiliser_on);
 }
 
+TEST(CanonNote, LongExposuresOfTheFirstRawFilesKeepTheirSign) {
+  // A frame of an EOS D30: -76 as an unsigned word, 5.04 s to ExifTool; Exiv2 makes 1 s of it.
+  ExifFile file = canon_file("Canon EOS D30");
+  file.set("Exif.Photo.ExposureTime", "1/1").set("Exif.CanonSi.0x0000", Exiv2::unsignedShort, "46");
+  file.set("Exif.CanonSi.ShutterSpeedValue", Exiv2::unsignedShort, "65460");
+  EXPECT_NEAR(file.read().capture.exposure_time_s.value().value, 5.0397, 1e-4);
+  file.set("Exif.Photo.ExifVersion", "48 50 51 48");   // a file with Exif of its own
+  EXPECT_DOUBLE_EQ(file.read().capture.exposure_time_s.value().value, 1);
+}
+
 TEST(CanonNote, ALensNumberIsBelievedOnlyWithItsRange) {
   // 251 is a 70-200 mm to Exiv2; the lens of this frame is a 16-35 mm.
   ExifFile file = canon_file("Canon EOS D30");
