@@ -10,7 +10,6 @@
 namespace focusfall {
 namespace {
 
-constexpr float kStartSigma = 1.2f;
 constexpr float kLeastSigma = 0.25f, kMostSigma = 5.0f;
 constexpr int kSteps = 8;
 constexpr float kMostShift = 0.5f;       // px a step
@@ -220,9 +219,9 @@ void bin_pixels(const StripPixels& pixels, float nx, float ny, EdgeProfile& prof
   }
 }
 
-std::optional<EdgeFit> fit_profile(const EdgeProfile& profile) {
+std::optional<EdgeFit> fit_profile(const EdgeProfile& profile, float start_sigma_px) {
   EdgeFit fit;
-  fit.sigma_px = kStartSigma;
+  fit.sigma_px = std::clamp(start_sigma_px, kLeastSigma, kMostSigma);
   if (!fit_levels(profile, fit) || fit.amplitude == 0) return std::nullopt;
 
   for (int step = 0; step < kSteps; ++step) {
@@ -237,12 +236,13 @@ std::optional<EdgeFit> fit_profile(const EdgeProfile& profile) {
     if (!solve4(eq.a, eq.b)) return std::nullopt;
     const float shift = std::clamp(eq.b[2] * scale, -kMostShift, kMostShift);
     const float log_sigma = std::clamp(eq.b[3] * scale, -kMostLogSigma, kMostLogSigma);
+    const bool at_end = fit.sigma_px >= kMostSigma && log_sigma > 0;   // wider than the window can tell
     fit.base += eq.b[0];
     fit.amplitude += eq.b[1];
     fit.offset_px += shift;
     fit.sigma_px = std::clamp(fit.sigma_px * std::exp(log_sigma), kLeastSigma, kMostSigma);
     if (std::abs(fit.offset_px) > 4.0f) return std::nullopt;
-    if (std::abs(shift) < kConverged && std::abs(log_sigma) < kConverged) break;
+    if (std::abs(shift) < kConverged && (at_end || std::abs(log_sigma) < kConverged)) break;
     if (step == kHopelessAfter && sum_square > square(kHopelessResidual * fit.amplitude) * sum_weight) return std::nullopt;
   }
   const NormalEquations end = equations(profile, fit);

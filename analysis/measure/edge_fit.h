@@ -39,7 +39,9 @@ struct EdgeFit {
 
 // B + A * Phi((u - u0) / sigma) by Gauss-Newton on a window that follows the width; nullopt if the normal equations
 // break down (a flat or lopsided profile).
-std::optional<EdgeFit> fit_profile(const EdgeProfile& profile);
+// The steps begin at `start_sigma_px`; where they end does not depend on it.
+inline constexpr float kStartSigma = 1.2f;
+std::optional<EdgeFit> fit_profile(const EdgeProfile& profile, float start_sigma_px = kStartSigma);
 
 // ---- implementation of the template ----
 

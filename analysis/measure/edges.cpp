@@ -447,7 +447,8 @@ void refit_on(const Pixels& pixels, const Pyramid& pyramid, double noise_codes, 
     if (x < kProfileReach || y < kProfileReach || x >= last_x || y >= last_y) continue;
     gather_profile(pixels, x, y, edge.normal_x, edge.normal_y, profile);
     if (profile.highest > kBrightestNear || profile.lowest < kDarkestNear) continue;
-    const auto fit = fit_profile(profile);
+    // A Gaussian twice as wide on twice as fine a level, the pyramid's own filter aside.
+    const auto fit = fit_profile(profile, edge.width_level_px * static_cast<float>(1 << (edge.level - level)));
     if (fit && passes_gates(*fit, noise, level)) {
       edges.push_back(edge_sample(pyramid, level, x, y, edge.normal_x, edge.normal_y, *fit));
     }

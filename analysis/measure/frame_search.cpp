@@ -7,9 +7,11 @@ namespace focusfall {
 namespace {
 
 constexpr int kFirstLevel = 2;
-constexpr int kEdgesPerTile = 10;          // on one level: nearly twice what the blur of a tile needs
+constexpr int kEdgesPerTile = 10;          // on one level: nearly twice what the blur of a tile needs,
+constexpr int kEdgesPerLargeTile = 8;      //   and of the many tiles of a large frame, whose edges lie farther apart
+constexpr int kLargeTile_px = 128;
 constexpr int kBlock = 32;                 // px of a level: the ration of EdgeSearchOptions counts in these
-constexpr std::size_t kEnoughEdges = 8;    // on a level that suits the blur: no other is searched
+constexpr std::size_t kEnoughEdges = 7;    // on a level that suits the blur: no other is searched
 constexpr float kSharpSigma = 1.25f;       // level px, median of a tile: sharper, the next finer level tells more
 constexpr float kTooWideSigma = 2.3f;      // level px, median of a tile: wider, a coarser level is asked
 
@@ -66,11 +68,12 @@ class FrameSearch {
   void search(int level, const TileMask* mask, std::vector<PixelRect>* crowded = nullptr) {
     const double block_px = kBlock << level;
     const double share = block_px * block_px / (static_cast<double>(out_.tile_px) * out_.tile_px);
+    const int per_tile = out_.tile_px >= kLargeTile_px ? kEdgesPerLargeTile : kEdgesPerTile;
     const std::size_t first = out_.edges.size();
     find_edges(pyramid_, pyramid_.region, noise_codes_,
                {.finest_level = level,
                 .coarsest_level = level,
-                .edges_per_block = std::max(static_cast<int>(kEdgesPerTile * share), 1),
+                .edges_per_block = std::max(static_cast<int>(per_tile * share), 1),
                 .tiles = mask,
                 .crowded = crowded},
                buffers_, out_.edges);

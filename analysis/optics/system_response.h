@@ -17,6 +17,8 @@ struct SystemResponse {
   double motion_length_px = 0;          // straight path at constant speed; 0 = none
   double motion_angle_deg = 0;          // direction of that path
   double pixel_aperture_px = 1;         // side of the square that a pixel gathers light from; 0 = a point
+
+  bool operator==(const SystemResponse&) const = default;
 };
 
 // Wavefront error at the rim of the pupil in wavelengths, W20 = c / (8 lambda N); nullopt without diffraction.

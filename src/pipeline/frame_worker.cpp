@@ -27,11 +27,28 @@ void note_format(const PictureFormat& format, FrameRecord& record) {
   for (const DecodeNote& note : format.notes) record.issues.push_back({Stage::decode, note.code, note.message});
 }
 
-// The forward model: what an aim exactly in focus would report.
-void predict_reading(const OpticalSetup& setup, Prediction& prediction) {
+// The forward model of the last frame: the frames of a burst ask for the same one, which costs as much as decoding a
+// third of a frame.
+class ForwardMemory {
+ public:
+  const std::optional<ForwardReading>& reading(const SystemResponse& response) {
+    if (response_ != response) {
+      reading_ = forward_reading(response);
+      response_ = response;
+    }
+    return reading_;
+  }
+
+ private:
+  std::optional<SystemResponse> response_;
+  std::optional<ForwardReading> reading_;
+};
+
+// What an aim exactly in focus would report.
+void predict_reading(const OpticalSetup& setup, ForwardMemory& forward, Prediction& prediction) {
   const auto response = system_response(setup, 0);
   if (!response) return;
-  if (const auto reading = forward_reading(*response)) {
+  if (const auto& reading = forward.reading(*response)) {
     const double baseline = prediction.baseline_px2 ? prediction.baseline_px2->value : 0;
     prediction.blur_disc_px = blur_disc_px(reading->squared_disc_px2 + baseline);
     prediction.edge_rise_px = disc_edge_rise_px(*prediction.blur_disc_px);
@@ -54,6 +71,7 @@ struct FrameWorker::State {
   DecodeWorkspace decode;
   PictureSink sink;
   FrameMeasurer measurer;
+  ForwardMemory forward;
 
   bool read(std::span<const std::byte> bytes, FrameRecord& record, PictureFormat& format);
   Resolved resolve_frame(FrameRecord& record, const PictureFormat& format);
@@ -98,7 +116,7 @@ Resolved FrameWorker::State::resolve_frame(FrameRecord& record, const PictureFor
   Prediction prediction = predict(*resolved.setup);
   prediction.baseline_px2 = resolved.baseline.squared_disc_px2;
   prediction.baseline_source = resolved.baseline.source;
-  predict_reading(*resolved.setup, prediction);
+  predict_reading(*resolved.setup, forward, prediction);
   record.prediction = std::move(prediction);
   return resolved;
 }

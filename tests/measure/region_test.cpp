@@ -19,7 +19,8 @@ constexpr int kMargin = 32;   // px drawn around the region, as a picture has th
 std::optional<BlurEstimate> measured(render::TileSpec spec) {
   const int size = spec.size_px;
   spec.size_px += 2 * kMargin;
-  const LumaPicture picture{render::render_tile(spec).luma, srgb_linear_of_code(256)};
+  const render::Picture tile = render::render_tile(spec);
+  const LumaPicture picture{tile.luma, srgb_linear_of_code(256), tile.coding_step_codes};
   MeasureRequest request;
   request.whole_frame = false;
   const double margin = static_cast<double>(kMargin) / spec.size_px;
