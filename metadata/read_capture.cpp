@@ -91,6 +91,9 @@ void merge_note(const MakerNote& note, Capture& capture, Remarks& remarks) {
   fill(capture.lens, note.lens, Source::maker_note);
   fill(capture.lens_serial, note.lens_serial, Source::maker_note);
   fill(capture.sequence, note.sequence, Source::maker_note);
+  if (!capture.focal_length_mm && note.focal_length_mm) {
+    fill(capture.focal_length_mm, plausible(*note.focal_length_mm, kFocalLength, remarks), Source::maker_note);
+  }
   if (!capture.iso_speed && note.iso_speed) {
     fill(capture.iso_speed, plausible(*note.iso_speed, kIsoSpeed, remarks), Source::maker_note);
   }

@@ -21,6 +21,7 @@ constexpr take::Code<bool> kStabiliser[] = {{0, false},  {256, false}, {1, true}
 
 // An editor that moves the note without its offsets leaves arrays that do not begin with their own length in bytes.
 bool is_in_place(const NoteContext& context) {
+  if (!offsets_lie_in_note(context, 0)) return false;
   const struct {
     const char* length;
     const char* group;
@@ -257,6 +258,12 @@ void take_iso_speed(const NoteContext& context, const char* key, MakerNote& note
   note.iso_speed = 100.0 / 32 * std::exp2(static_cast<double>(*base + *gain) / 32);
 }
 
+// The second number, in units of the third number of the lens; the first raw files have no other.
+void take_focal_length(const NoteContext& context, const char* key, MakerNote& note) {
+  const auto number = context.tags.real(key, 1), units = context.tags.real("Exif.CanonCs.Lens", 2);
+  if (!note.focal_length_mm && number && *number > 0 && units && *units > 0) note.focal_length_mm = *number / *units;
+}
+
 // 32nds of a stop, in which 12 and 20 stand for one and two thirds.
 double stops(std::int64_t code) {
   const std::int64_t magnitude = std::abs(code), part = magnitude % 32;
@@ -284,6 +291,7 @@ constexpr NoteRow kRows[] = {
     {"Exif.CanonCs.LensType", take_lens_by_number},
     {"Exif.CanonCs.Lens", take_lens_range},
     {"Exif.Canon.SerialNumber", take_serial},
+    {"Exif.Canon.FocalLength", take_focal_length},
     {"Exif.CanonSi.ISOSpeed", take_iso_speed},
     {"Exif.CanonSi.ShutterSpeedValue", take_exposure_time},
     {"Exif.Canon.SensorInfo", take_sensor_width},

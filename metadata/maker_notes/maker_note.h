@@ -20,6 +20,7 @@ struct MakerNote {
   std::optional<std::string> lens;
   std::optional<std::string> lens_serial;
   std::optional<long> sequence;
+  std::optional<double> focal_length_mm;
   std::optional<double> exposure_time_s;               // where the one in Exif is not the camera's own
   std::optional<double> iso_speed;
   std::optional<FocusMode> focus_mode;
@@ -70,6 +71,11 @@ std::span<const Maker> panasonic_notes();
 std::span<const Maker> pentax_notes();
 std::span<const Maker> samsung_notes();
 std::span<const Maker> sony_notes();
+
+// Whether a note whose offsets count from the start of the TIFF header stands where they expect it: most of its values
+// that stand elsewhere in the file must lie inside the note. `directory_at`: where in the note its directory starts.
+// True where that cannot be told.
+bool offsets_lie_in_note(const NoteContext& context, std::size_t directory_at);
 
 struct NoteResult {
   MakerNote note;

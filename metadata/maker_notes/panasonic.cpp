@@ -25,7 +25,10 @@ constexpr NoteRow kRows[] = {
     {"Exif.Panasonic.InternalSerialNumber", take::text<&MakerNote::body_serial>},
 };
 
-constexpr Maker kMakers[] = {{"PANASONIC", kRows}, {"LEICA", kRows}};
+// "Panasonic" and three NUL bytes stand before the directory.
+bool is_in_place(const NoteContext& context) { return offsets_lie_in_note(context, 12); }
+
+constexpr Maker kMakers[] = {{"PANASONIC", kRows, is_in_place}, {"LEICA", kRows}};
 
 }  // namespace
 

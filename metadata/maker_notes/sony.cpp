@@ -1,6 +1,7 @@
 #include <algorithm>
 #include <array>
 #include <cmath>
+#include <string_view>
 
 #include "metadata/focus_distance.h"
 #include "metadata/maker_notes/take.h"
@@ -97,7 +98,15 @@ constexpr NoteRow kRows[] = {
     {"Exif.Sony1.SequenceNumber", take::sequence<0, 65535>},
 };
 
-constexpr Maker kMakers[] = {{"SONY", kRows}};
+// "SONY DSC " or "SONY CAM " and three NUL bytes stand before the directory of most bodies.
+bool is_in_place(const NoteContext& context) {
+  const auto note = context.tags.bytes("Exif.Photo.MakerNote");
+  constexpr std::string_view kSignature = "SONY ";
+  const bool signed_note = note.size() > 12 && std::equal(kSignature.begin(), kSignature.end(), note.begin());
+  return offsets_lie_in_note(context, signed_note ? 12 : 0);
+}
+
+constexpr Maker kMakers[] = {{"SONY", kRows, is_in_place}};
 
 }  // namespace
 

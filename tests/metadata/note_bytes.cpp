@@ -59,8 +59,9 @@ void append_directory(Bytes& bytes, const std::vector<NoteEntry>& entries) {
   bytes.insert(bytes.end(), data.begin(), data.end());
 }
 
-Bytes olympus_note(const std::vector<SubDirectory>& parts) {
-  Bytes note = {'O', 'L', 'Y', 'M', 'P', 'U', 'S', 0, 'I', 'I', 3, 0};
+namespace {
+
+Bytes note_of_directories(Bytes note, const std::vector<SubDirectory>& parts) {
   std::size_t part_at = note.size() + 2 + 12 * parts.size() + 4;
   Bytes all(part_at, 0);   // place for what comes before the parts, so that their offsets are right
   std::vector<NoteEntry> pointers;
@@ -73,6 +74,16 @@ Bytes olympus_note(const std::vector<SubDirectory>& parts) {
   append_directory(note, pointers);
   note.insert(note.end(), all.begin() + static_cast<std::ptrdiff_t>(part_at), all.end());
   return note;
+}
+
+}  // namespace
+
+Bytes olympus_note(const std::vector<SubDirectory>& parts) {
+  return note_of_directories({'O', 'L', 'Y', 'M', 'P', 'U', 'S', 0, 'I', 'I', 3, 0}, parts);
+}
+
+Bytes om_system_note(const std::vector<SubDirectory>& parts) {
+  return note_of_directories({'O', 'M', ' ', 'S', 'Y', 'S', 'T', 'E', 'M', 0, 0, 0, 'I', 'I', 4, 0}, parts);
 }
 
 }  // namespace focusfall

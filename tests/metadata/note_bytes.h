@@ -35,13 +35,14 @@ NoteEntry text(std::uint16_t tag, const std::string& value);
 // Appends the directory and its data. Offsets count from the start of `bytes`. Entries in ascending order of tags.
 void append_directory(Bytes& bytes, const std::vector<NoteEntry>& entries);
 
-// A directory whose entries are directories, tag by tag: "OLYMPUS", byte order, version, then everything by offsets
-// from the start of the note.
+// A directory whose entries are directories, tag by tag: a signature with the byte order and the version ("OLYMPUS",
+// since 2020 "OM SYSTEM"), then everything by offsets from the start of the note.
 struct SubDirectory {
   std::uint16_t tag = 0;
   std::vector<NoteEntry> entries;
 };
 
 Bytes olympus_note(const std::vector<SubDirectory>& parts);
+Bytes om_system_note(const std::vector<SubDirectory>& parts);
 
 }  // namespace focusfall

@@ -67,6 +67,74 @@ TEST(ReadCapture, TheFirstPartOfAJpegHoldsItsCaptureData) {
   EXPECT_TRUE(reading.remarks.empty());
 }
 
+// A TIFF structure with one Exif value, as every container holds it.
+std::vector<std::uint8_t> small_tiff() {
+  ExifFile file;
+  file.set("Exif.Photo.FNumber", "28/10");
+  Exiv2::Blob blob;
+  Exiv2::ExifParser::encode(blob, Exiv2::littleEndian, file.exif);
+  return {blob.begin(), blob.end()};
+}
+
+void append_big_endian(std::string& bytes, std::size_t value, int count) {
+  for (int shift = 8 * (count - 1); shift >= 0; shift -= 8) bytes += static_cast<char>(value >> shift & 0xFF);
+}
+
+std::string box(const std::string& type, const std::string& content) {
+  std::string bytes;
+  append_big_endian(bytes, content.size() + 8, 4);
+  return bytes + type + content;
+}
+
+// ISO/IEC 14496-12 and 23008-12: a file type, and a meta box whose only item is Exif; its place is in iloc.
+std::string heif_with_exif() {
+  const auto tiff = small_tiff();
+  const std::string exif = std::string(4, '\0') + std::string(tiff.begin(), tiff.end());   // offset to the TIFF header
+  const std::string type = box("ftyp", std::string("heic\0\0\0\0mif1heic", 16));
+  const auto meta_at = [&](std::size_t exif_at) {
+    const std::string entry = std::string("\x02\0\0\0\0\x01\0\0", 8) + "Exif" + std::string(1, '\0');   // item 1, no protection
+    const std::string items = box("iinf", std::string("\0\0\0\0\0\x01", 6) + box("infe", entry));
+    std::string place("\0\0\0\0\x44\0\0\x01\0\x01\0\0\0\x01", 14);   // 4-byte offsets and lengths; item 1, one extent
+    append_big_endian(place, exif_at, 4);
+    append_big_endian(place, exif.size(), 4);
+    const std::string handler = box("hdlr", std::string(8, '\0') + "pict" + std::string(13, '\0'));
+    return box("meta", std::string(4, '\0') + handler + items + box("iloc", place));
+  };
+  const std::size_t exif_at = type.size() + meta_at(0).size() + 8;
+  return type + meta_at(exif_at) + box("mdat", exif);
+}
+
+// PNG, third edition: a chunk eXIf holds the TIFF structure.
+std::string png_with_exif() {
+  const auto chunk = [](const std::string& name, const std::string& content) {
+    std::string bytes;
+    append_big_endian(bytes, content.size(), 4);
+    bytes += name + content;
+    std::uint32_t crc = 0xFFFFFFFF;
+    for (const char c : name + content) {
+      crc ^= static_cast<std::uint8_t>(c);
+      for (int k = 0; k < 8; ++k) crc = (crc >> 1) ^ (0xEDB88320 & (0 - (crc & 1)));
+    }
+    append_big_endian(bytes, ~crc & 0xFFFFFFFF, 4);
+    return bytes;
+  };
+  const auto tiff = small_tiff();
+  return std::string("\x89PNG\r\n\x1a\n") + chunk("IHDR", std::string("\0\0\0\x01\0\0\0\x01\x08\x02\0\0\0", 13)) +
+         chunk("eXIf", std::string(tiff.begin(), tiff.end())) +
+         chunk("IDAT", std::string("\x78\x9c\x63\x60\x60\x60\0\0\0\x04\0\x01", 12)) + chunk("IEND", "");
+}
+
+TEST(ReadCapture, EveryContainerOfExifIsRead) {
+  const auto tiff = small_tiff();
+  const std::pair<const char*, std::string> files[] = {
+      {"TIFF", std::string(tiff.begin(), tiff.end())}, {"PNG", png_with_exif()}, {"HEIF", heif_with_exif()}};
+  for (const auto& [kind, file] : files) {
+    const CaptureReading reading = read_capture(bytes_of(file), {1, 1});
+    ASSERT_TRUE(reading.capture.f_number) << kind;
+    EXPECT_DOUBLE_EQ(reading.capture.f_number->value, 2.8) << kind;
+  }
+}
+
 TEST(ReadCapture, WhatIsNoPictureGivesNothingAndARemark) {
   for (const std::string text : {"", "x", "not a picture at all, but a text of some length", "http://x/y.jpg"}) {
     const CaptureReading reading = read_capture(bytes_of(text), {});

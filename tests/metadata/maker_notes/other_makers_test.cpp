@@ -3,6 +3,7 @@
 
 #include <cmath>
 
+#include "metadata/remarks.h"
 #include "tests/metadata/exif_file.h"
 #include "tests/metadata/note_bytes.h"
 
@@ -42,6 +43,14 @@ TEST(OlympusNote, TheNumeratorOfTheDistanceIsInMillimetres) {
   EXPECT_FALSE(with_olympus_distance(4294967295U, 10).read().capture.focus_distance);
   EXPECT_FALSE(with_olympus_distance(4294967280U, 1).read().capture.focus_distance);
   EXPECT_FALSE(with_olympus_distance(0, 10).read().capture.focus_distance);
+}
+
+TEST(OlympusNote, TheNoteOfTheSuccessorIsReadAlike) {
+  ExifFile file = file_of("OM Digital Solutions", "OM-1");
+  file.set_bytes("Exif.Photo.MakerNote", om_system_note({{kFocusInfo, {rationals(0x0305, 5, {2500, 10})}}}));
+  const auto distance = file.read().capture.focus_distance;
+  ASSERT_TRUE(distance);
+  EXPECT_DOUBLE_EQ(distance->value.value_m, 2.5);
 }
 
 // The numbers of a real frame: (113,107)-(142,145) in 255ths.
@@ -213,6 +222,29 @@ TEST(PanasonicNote, ThePointIsAFractionAndALargeNumberNone) {
   EXPECT_DOUBLE_EQ(areas.front().box.y, 0.75);
   file.set("Exif.Panasonic.AFPointPosition", Exiv2::unsignedRational, "16777216/1 16777216/1");
   EXPECT_TRUE(file.read().capture.focus_areas.empty());
+}
+
+TEST(PanasonicNote, ANoteThatAnEditorMovedIsNotBelieved) {
+  ExifFile file = file_of("Panasonic", "DMC-G9");
+  file.set("Exif.Panasonic.AFPointPosition", Exiv2::unsignedRational, "64/256 192/256");
+  file.set("Exif.Panasonic.LensType", Exiv2::asciiString, "LUMIX G 20/F1.7");
+  // The note as it stands, in a file that has more in front of it: the offsets in it point to other places.
+  Exiv2::Blob tiff;
+  Exiv2::ExifParser::encode(tiff, Exiv2::littleEndian, file.exif);
+  Exiv2::ExifData decoded;
+  Exiv2::ExifParser::decode(decoded, tiff.data(), static_cast<std::uint32_t>(tiff.size()));
+  const auto note = decoded.findKey(Exiv2::ExifKey("Exif.Photo.MakerNote"));
+  ASSERT_NE(note, decoded.end());
+  std::vector<std::uint8_t> bytes(static_cast<std::size_t>(note->size()));
+  note->copy(bytes.data(), Exiv2::littleEndian);
+
+  ExifFile moved = file_of("Panasonic", "DMC-G9");
+  moved.set("Exif.Image.Software", std::string(200, 'x'));
+  moved.set_bytes("Exif.Photo.MakerNote", bytes);
+  const CaptureReading reading = moved.read();
+  EXPECT_TRUE(has_remark(reading, kMakerNoteUnusable));
+  EXPECT_TRUE(reading.capture.focus_areas.empty());
+  EXPECT_FALSE(reading.capture.lens);
 }
 
 TEST(PanasonicNote, ModeStabiliserSequenceAndLensAreRead) {
