@@ -3,8 +3,10 @@
 #include <fmt/format.h>
 
 #include <algorithm>
+#include <array>
 #include <cmath>
 
+#include "metadata/picture_shape.h"
 #include "metadata/standard_exif.h"
 
 namespace focusfall {
@@ -24,19 +26,10 @@ constexpr double kEquivalentBound = 0.04;
 // Two rules that differ by more do not speak of the same picture.
 constexpr double kAgreement = 0.08;
 
-// Pictures of one shape: cropping of masked borders and rounding stay below, crops to another format do not.
-constexpr double kSameShape = 0.02;
-
 double long_side(DecodedSize size) { return std::max(size.width_px, size.height_px); }
 double short_side(DecodedSize size) { return std::min(size.width_px, size.height_px); }
-bool known(DecodedSize size) { return size.width_px > 0 && size.height_px > 0; }
 
 CoarseValue with_bound(double value, double bound) { return {value, value * (1 - bound), value * (1 + bound)}; }
-
-bool same_shape(DecodedSize a, DecodedSize b) {
-  const double shape_a = long_side(a) / short_side(a), shape_b = long_side(b) / short_side(b);
-  return std::abs(shape_a / shape_b - 1) < kSameShape;
-}
 
 void remark_unknown(std::string reason, Remarks& remarks) {
   remarks.push_back({kPitchUnknown, reason + " The pixel pitch is taken as not known; --pixel-pitch or --sensor says it."});
@@ -79,7 +72,7 @@ std::optional<double> focal_plane_pitch(const PitchEvidence& e) {
   if (e.sensor_active_width_px && *e.sensor_active_width_px > 0) {
     pitch = sensor->sensor_um / *e.sensor_active_width_px;
   }
-  if (e.reduced_by_camera && known(e.recorded)) pitch *= sensor->native_px / long_side(e.recorded);
+  if (e.reduced_by_camera && is_known(e.recorded)) pitch *= sensor->native_px / long_side(e.recorded);
   return pitch;
 }
 
@@ -115,14 +108,19 @@ bool altered(const PitchEvidence& e, Remarks& remarks) {
     remark_unknown("The camera's digital zoom was in use.", remarks);
     return true;
   }
-  if (known(e.recorded) && known(e.decoded) && !same_shape(e.recorded, e.decoded)) {
+  if (is_known(e.recorded) && is_known(e.decoded) && !same_shape(e.recorded, e.decoded)) {
     remark_unknown(fmt::format("The camera recorded {} x {} px and the picture holds {} x {} px: it was cropped.",
                                e.recorded.width_px, e.recorded.height_px, e.decoded.width_px, e.decoded.height_px),
                    remarks);
     return true;
   }
+  // Programs that write the tags anew put the size of their own picture beside the resolution of the camera's.
   const auto sensor = sensor_fraction(e);
-  if (sensor && known(e.recorded) && !e.reduced_by_camera && long_side(e.recorded) < 0.98 * sensor->native_px) {
+  if (e.rewritten && !sensor && !e.equivalent_mm) {
+    remark_unknown("Another program wrote the capture data anew, and the recorded size may be its own.", remarks);
+    return true;
+  }
+  if (sensor && is_known(e.recorded) && !e.reduced_by_camera && long_side(e.recorded) < 0.98 * sensor->native_px) {
     remark_unknown(fmt::format("The sensor resolution belongs to a width of {:.0f} px and {:.0f} px are recorded: "
                                "the picture was reduced or cropped.",
                                sensor->native_px, long_side(e.recorded)),
@@ -141,9 +139,9 @@ bool contradict(double by_plane, const CoarseValue& by_equivalent) {
 }  // namespace
 
 std::optional<CoarseValue> pixel_pitch_um(const PitchEvidence& e, Remarks& remarks) {
-  const DecodedSize recorded = known(e.recorded) ? e.recorded : e.decoded;
-  if (!known(recorded)) return std::nullopt;
-  const double to_delivered = known(e.decoded) ? long_side(recorded) / long_side(e.decoded) : 1.0;
+  const DecodedSize recorded = is_known(e.recorded) ? e.recorded : e.decoded;
+  if (!is_known(recorded)) return std::nullopt;
+  const double to_delivered = is_known(e.decoded) ? long_side(recorded) / long_side(e.decoded) : 1.0;
 
   auto by_plane = focal_plane_pitch(e);
   if (!by_plane) by_plane = diagonal_pitch(e, recorded);
@@ -162,6 +160,16 @@ std::optional<CoarseValue> pixel_pitch_um(const PitchEvidence& e, Remarks& remar
   return plausible(pitch.value, kPixelPitch, remarks) ? std::optional(pitch) : std::nullopt;
 }
 
+namespace {
+
+// Makers of which no camera is known to leave out its note (judgement).
+bool always_writes_note(const std::string& make) {
+  constexpr std::array kMakes = {"Canon", "NIKON", "SONY", "OLYMPUS", "Panasonic", "FUJIFILM", "PENTAX"};
+  return std::ranges::any_of(kMakes, [&](const char* known_make) { return make.starts_with(known_make); });
+}
+
+}  // namespace
+
 PitchEvidence pitch_evidence(const ExifTags& tags, DecodedSize decoded) {
   PitchEvidence evidence;
   evidence.recorded = recorded_size(tags).value_or(DecodedSize{});
@@ -173,6 +181,9 @@ PitchEvidence pitch_evidence(const ExifTags& tags, DecodedSize decoded) {
     if (unit) evidence.focal_plane_unit = static_cast<int>(std::clamp<std::int64_t>(*unit, 0, 100));
   }
   evidence.equivalent_mm = tags.real("Exif.Photo.FocalLengthIn35mmFilm");
+  if (evidence.equivalent_mm && *evidence.equivalent_mm <= 0) evidence.equivalent_mm.reset();   // 0: not known
+  evidence.rewritten =
+      always_writes_note(tags.text("Exif.Image.Make").value_or("")) && !tags.has("Exif.Photo.MakerNote");
   evidence.digital_zoom = tags.real("Exif.Photo.DigitalZoomRatio");
   return evidence;
 }

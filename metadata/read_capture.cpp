@@ -12,6 +12,7 @@
 #include "metadata/focus_area.h"
 #include "metadata/focus_distance.h"
 #include "metadata/maker_notes/maker_note.h"
+#include "metadata/picture_shape.h"
 #include "metadata/pixel_pitch.h"
 #include "metadata/remarks.h"
 #include "metadata/standard_exif.h"
@@ -126,6 +127,19 @@ void derive_pitch(const ExifTags& tags, DecodedSize decoded, const MakerNote& no
   fill(reading.capture.pixel_pitch_um, pixel_pitch_um(evidence, reading.remarks), Source::derived);
 }
 
+// Areas that the camera recorded have their place in the picture that it wrote; one that was cropped or turned since has
+// its subject elsewhere. Regions of XMP are for programs to keep in order.
+void drop_misplaced_areas(DecodedSize recorded, DecodedSize decoded, CaptureReading& reading) {
+  if (!is_known(recorded) || !is_known(decoded)) return;
+  if (same_shape(recorded, decoded) && !is_turned(recorded, decoded)) return;
+  const auto dropped = std::erase_if(reading.capture.focus_areas, [](const FocusArea& area) { return area.source != Source::xmp; });
+  if (dropped == 0) return;
+  reading.remarks.push_back({kFocusAreaMisplaced,
+                             fmt::format("The camera recorded {} x {} px and the picture holds {} x {} px: it was cropped "
+                                         "or turned, and the focus area is not where it was.",
+                                         recorded.width_px, recorded.height_px, decoded.width_px, decoded.height_px)});
+}
+
 void interpret(const ParsedFile& parsed, DecodedSize decoded, CaptureReading& reading) {
   Capture& capture = reading.capture;
   const ExifTags tags(parsed.exif);
@@ -140,6 +154,7 @@ void interpret(const ParsedFile& parsed, DecodedSize decoded, CaptureReading& re
   fill(capture.lens, lens_by_specification(tags), Source::exif);
   read_standard_xmp(XmpTags(parsed.xmp), decoded, capture, reading.remarks);
 
+  drop_misplaced_areas(recorded_size(tags).value_or(DecodedSize{}), decoded, reading);
   std::ranges::stable_sort(capture.focus_areas, {}, &FocusArea::kind);
   if (capture.focus_distance && capture.focal_length_mm) {
     allow_for_origin(capture.focus_distance->value, capture.focal_length_mm->value);

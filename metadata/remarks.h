@@ -13,6 +13,7 @@ inline constexpr const char* kMetadataUnreadable = "metadata-unreadable";   // t
 inline constexpr const char* kValueAbsurd = "metadata-value-absurd";        // one value that no camera can have meant
 inline constexpr const char* kPitchUnknown = "pixel-pitch-unknown";         // recorded, but not to be relied upon
 inline constexpr const char* kMakerNoteUnusable = "maker-note-unusable";    // displaced by an editor
+inline constexpr const char* kFocusAreaMisplaced = "focus-area-misplaced";  // cropped or turned since
 
 using Remarks = std::vector<CaptureRemark>;
 

@@ -43,6 +43,7 @@ inline constexpr IssueCode kIssueCodes[] = {
     {"metadata-unreadable", "the capture data, or a part of them, cannot be read"},
     {"metadata-value-absurd", "a value that no camera can have meant"},
     {"maker-note-unusable", "the maker note was displaced by an editor"},
+    {"focus-area-misplaced", "the picture was cropped or turned since the focus area was recorded"},
     {"pixel-pitch-unknown", "no pixel pitch, or none to be relied upon"},
     {"orientation-unknown", "which side is up is not recorded"},
     {"setup-incomplete", "focal length or f-number is not known"},

@@ -133,6 +133,21 @@ TEST(PixelPitch, AnEosFractionBelongsToTheNativeWidth) {
   EXPECT_EQ(remarks.size(), 1U);
 }
 
+TEST(PixelPitch, CaptureDataWrittenAnewByAnotherProgramAreNotBelieved) {
+  // A reduced frame of an EOS REBEL T2i: 5728 px per inch as the camera wrote, beside a width of 640 px; no maker note.
+  const auto reading = [](const char* make) {
+    ExifFile file;
+    file.set("Exif.Image.Make", make).set("Exif.Photo.FocalLength", "36/1");
+    file.set("Exif.Photo.PixelXDimension", "640").set("Exif.Photo.PixelYDimension", "427");
+    file.set("Exif.Photo.FocalPlaneXResolution", "97379/17").set("Exif.Photo.FocalPlaneResolutionUnit", "2");
+    file.decoded = {640, 427};
+    return file.read();
+  };
+  EXPECT_FALSE(reading("Canon").capture.pixel_pitch_um);
+  EXPECT_TRUE(has_remark(reading("Canon"), kPitchUnknown));
+  EXPECT_TRUE(reading("A maker of no notes").capture.pixel_pitch_um);
+}
+
 TEST(PixelPitch, ThePitchOfAFileIsDerivedFromItsTags) {
   ExifFile file;
   file.set("Exif.Photo.PixelXDimension", "6000").set("Exif.Photo.PixelYDimension", "4000");

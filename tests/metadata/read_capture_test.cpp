@@ -59,6 +59,18 @@ TEST(ReadCapture, TheFullFileHoldsWhatTheFollowingTestsDamage) {
   EXPECT_EQ(c.focus_areas.size(), 2U);
 }
 
+TEST(ReadCapture, FocusAreasOfAPictureThatWasCroppedOrTurnedAreDropped) {
+  ExifFile file = full_file();
+  file.decoded = {2144, 1424};   // reduced
+  EXPECT_EQ(file.read().capture.focus_areas.size(), 2U);
+  for (const DecodedSize size : {DecodedSize{2848, 4288}, DecodedSize{4288, 2412}, DecodedSize{1000, 1000}}) {
+    file.decoded = size;
+    const CaptureReading reading = file.read();
+    EXPECT_TRUE(has_remark(reading, kFocusAreaMisplaced));
+    for (const FocusArea& area : reading.capture.focus_areas) EXPECT_EQ(area.source, Source::xmp);
+  }
+}
+
 TEST(ReadCapture, TheFirstPartOfAJpegHoldsItsCaptureData) {
   std::vector<std::byte> jpeg = full_file().jpeg();
   jpeg.resize(jpeg.size() - 3);   // the scan data

@@ -154,6 +154,7 @@ TEST(StandardExif, TheBoxThatPhonesWriteByDefaultIsNoSubjectArea) {
   const auto areas = [](const char* make, const char* size_x, const char* size_y, const char* area) {
     ExifFile file;
     file.set("Exif.Image.Make", make).set("Exif.Photo.PixelXDimension", size_x).set("Exif.Photo.PixelYDimension", size_y);
+    file.decoded = {std::stoi(size_x), std::stoi(size_y)};
     return file.set("Exif.Photo.SubjectArea", area).read().capture.focus_areas.size();
   };
   EXPECT_EQ(areas("Apple", "4032", "3024", "2015 1511 2217 1330"), 0U);    // 55 % x 44 %
