@@ -8,6 +8,7 @@
 #include "analysis/measure/frame_search.h"
 #include "analysis/measure/motion.h"
 #include "analysis/measure/noise.h"
+#include "analysis/measure/plane.h"
 #include "analysis/measure/pyramid.h"
 #include "analysis/measure/region_estimate.h"
 #include "analysis/measure/spectrum.h"
@@ -75,6 +76,7 @@ struct FrameMeasurer::Buffers {
   TileMap tile_map();
   std::optional<SharpestRegion> sharpest(const TileMap& tiles, cv::Size size);
   void measure_background(PixelRect aim, Measurement& out);
+  std::optional<PlaneReading> measure_plane(const MeasureRequest& request, cv::Size size);
   BlurReading reading(PixelRect region, const std::vector<EdgeSample>& edges);
 };
 
@@ -170,6 +172,17 @@ void FrameMeasurer::Buffers::measure_background(PixelRect aim, Measurement& out)
   out.background_motion = motion(some);
 }
 
+std::optional<PlaneReading> FrameMeasurer::Buffers::measure_plane(const MeasureRequest& request, cv::Size size) {
+  PlaneOptions options;
+  options.width_px = size.width;
+  options.height_px = size.height;
+  if (request.near_side_known) options.near_side = request.near_side;
+  options.aim = request.aim.box;
+  options.contact_x = request.contact_x;
+  options.contact_y = request.contact_y;
+  return plane(frame.edges, options);
+}
+
 Measurement FrameMeasurer::measure(const LumaPicture& picture, const MeasureRequest& request) {
   Buffers& b = *buffers_;
   Measurement out;
@@ -192,6 +205,7 @@ Measurement FrameMeasurer::measure(const LumaPicture& picture, const MeasureRequ
   TileMap tiles = b.tile_map();
   out.best = b.sharpest(tiles, size);
   b.measure_background(aim, out);
+  out.plane = b.measure_plane(request, size);
   if (request.keep_tiles) out.tiles = std::move(tiles);
   return out;
 }

@@ -202,7 +202,7 @@ std::vector<Figure> run_causes(const SetOptions& options) {
     const SceneSpec spec = spec_of(kind, first_key(options, 7) + static_cast<std::uint64_t>(i));
     const Scene scene = make_scene(spec);
     const render::Picture picture = render::render_frame(scene.frame);
-    const Measurement m = measure_with_plane({picture.luma, srgb_linear_of_code(256), picture.coding_step_codes}, request_for(scene.aim, picture.luma.size()), measurer);
+    const Measurement m = measurer.measure({picture.luma, srgb_linear_of_code(256), picture.coding_step_codes}, request_for(scene.aim, picture.luma.size()));
     const Outcome with = judge(scene, m, true), without = judge(scene, m, false);
     known[k] = {kind, score(kind, spec, with.verdict)};
     unknown[k] = {kind, score(kind, spec, without.verdict)};

@@ -26,7 +26,7 @@ struct Case {
 Reading measure(const SceneSpec& spec, FrameMeasurer& measurer) {
   const Scene scene = make_scene(spec);
   const render::Picture picture = render::render_frame(scene.frame);
-  const Measurement m = measure_with_plane({picture.luma, srgb_linear_of_code(256), picture.coding_step_codes}, request_for(scene.aim, picture.luma.size()), measurer);
+  const Measurement m = measurer.measure({picture.luma, srgb_linear_of_code(256), picture.coding_step_codes}, request_for(scene.aim, picture.luma.size()));
   Reading r;
   if (!m.plane) return r;
   r.fitted = true;

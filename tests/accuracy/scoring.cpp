@@ -7,11 +7,6 @@
 #include <numeric>
 #include <thread>
 
-#include "analysis/measure/edges.h"
-#include "analysis/measure/noise.h"
-#include "analysis/measure/plane.h"
-#include "analysis/measure/pyramid.h"
-
 namespace focusfall::accuracy {
 
 std::uint64_t first_key(const SetOptions& options, int set) {
@@ -70,25 +65,6 @@ MeasureRequest request_for(const cv::Rect& aim, cv::Size frame) {
   const double w = frame.width, h = frame.height;
   request.aim.box = {aim.x / w, aim.y / h, aim.width / w, aim.height / h};
   return request;
-}
-
-Measurement measure_with_plane(const LumaPicture& picture, const MeasureRequest& request, FrameMeasurer& measurer) {
-  Measurement m = measurer.measure(picture, request);
-  if (m.plane) return m;
-  const PixelRect whole{0, 0, picture.codes.cols, picture.codes.rows};
-  Pyramid pyramid;
-  build_pyramid(picture, whole, Pyramid::kLevels - 1, pyramid);
-  EdgeSearchBuffers buffers;
-  std::vector<EdgeSample> edges;
-  find_edges(pyramid, whole, noise_codes(picture, whole), {.coarsest_level = 0, .edges_per_block = 3}, buffers, edges);
-  find_edges(pyramid, whole, noise_codes(picture, whole), {.finest_level = 1, .edges_per_block = 4}, buffers, edges);
-  PlaneOptions options;
-  options.width_px = picture.codes.cols;
-  options.height_px = picture.codes.rows;
-  options.near_side = NearSide::bottom;
-  options.aim = request.aim.box;
-  m.plane = plane(edges, options);
-  return m;
 }
 
 }  // namespace focusfall::accuracy

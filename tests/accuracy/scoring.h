@@ -45,9 +45,6 @@ void for_each_case(int count, const std::function<void(int, FrameMeasurer&)>& wo
 // The aim of a frame whose box is given in px, as the program would ask for it.
 MeasureRequest request_for(const cv::Rect& aim, cv::Size frame);
 
-// The measurement with the plane, from the frame's edges as FrameMeasurer searches them.
-Measurement measure_with_plane(const LumaPicture& picture, const MeasureRequest& request, FrameMeasurer& measurer);
-
 // The sets; each prints its tables on stdout and returns the figures of its targets.
 std::vector<Figure> run_regions(const SetOptions& options);
 std::vector<Figure> run_predictions(const SetOptions& options);
