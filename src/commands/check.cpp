@@ -6,6 +6,7 @@
 #include <algorithm>
 #include <array>
 #include <memory>
+#include <optional>
 #include <string>
 #include <utility>
 #include <vector>
@@ -17,6 +18,7 @@
 #include "src/output/frame_json.h"
 #include "src/output/frame_text.h"
 #include "src/output/names.h"
+#include "src/output/overlay_folder.h"
 #include "src/output/progress.h"
 #include "src/output/visible_text.h"
 #include "src/pipeline/frame_pool.h"
@@ -30,6 +32,8 @@ struct CheckOptions {
   SettingsChoice settings;
   Format format = Format::text;
   bool brief = false;            // one line a frame
+  bool tiles = false;            // the tile map in the JSON
+  std::string overlay;           // folder for pictures; empty: none
   int workers = 0;               // 0: one a core
 };
 
@@ -37,6 +41,7 @@ struct CheckOptions {
 struct Tally {
   std::size_t frames = 0;
   std::size_t not_done = 0;
+  std::size_t not_drawn = 0;            // overlays that could not be written
   std::array<std::size_t, 6> focus{};   // by FocusVerdict
 };
 
@@ -61,6 +66,7 @@ class CheckRun {
     const Settings settings = load_settings(options_.settings);
     const Inputs inputs = load_inputs(options_.inputs);
     layout_ = text_layout(terminal_columns(STDOUT_FILENO), longest_path(inputs.paths));
+    if (!options_.overlay.empty()) open_overlays(inputs.paths);
     if (options_.format == Format::csv) out_.write(csv_header());
 
     Progress progress(inputs.paths.size(), is_terminal(STDERR_FILENO));
@@ -71,7 +77,8 @@ class CheckRun {
     if (options_.format == Format::text && tally_.frames > 1 && !out_.closed()) say(tally_text(tally_));
     if (interrupted()) return ExitCode::interrupted;
     static_cast<void>(outcome);
-    return tally_.not_done > 0 || !inputs.problems.empty() ? ExitCode::frames_missing : ExitCode::done;
+    const bool all_done = tally_.not_done == 0 && tally_.not_drawn == 0 && inputs.problems.empty();
+    return !all_done ? ExitCode::frames_missing : ExitCode::done;
   }
 
  private:
@@ -79,6 +86,22 @@ class CheckRun {
     int longest = 0;
     for (const std::string& path : paths) longest = std::max(longest, text_columns(visible_text(path)));
     return longest;
+  }
+
+  void open_overlays(const std::vector<std::string>& inputs) {
+    try {
+      overlays_.emplace(options_.overlay, inputs);
+    } catch (const std::exception& error) {
+      throw WrongUse(fmt::format("--overlay: {}", visible_text(error.what())));
+    }
+  }
+
+  void draw(const FrameRecord& record) {
+    if (!overlays_ || !record.done) return;
+    if (const auto drawn = overlays_->write(record); !drawn) {
+      ++tally_.not_drawn;
+      say(drawn.error());
+    }
   }
 
   // False once nobody reads any more.
@@ -91,6 +114,7 @@ class CheckRun {
     } else if (record.verdict) {
       ++tally_.focus[static_cast<std::size_t>(record.verdict->focus)];
     }
+    draw(record);
     const bool open = out_.write(text_of(record));
     progress.advance();
     return open;
@@ -98,7 +122,7 @@ class CheckRun {
 
   std::string text_of(const FrameRecord& record) const {
     switch (options_.format) {
-      case Format::json: return json_line(frame_json(record, {.tiles = options_.values.tiles}));
+      case Format::json: return json_line(frame_json(record, {.tiles = options_.tiles}));
       case Format::csv: return csv_line(record);
       case Format::text: break;
     }
@@ -109,6 +133,7 @@ class CheckRun {
   DataStream out_{STDOUT_FILENO};
   TextLayout layout_;
   Tally tally_;
+  std::optional<OverlayFolder> overlays_;
 };
 
 }  // namespace
@@ -118,7 +143,11 @@ std::function<ExitCode()> add_check(CLI::App& app) {
   add_input_argument(app, options->inputs, true);
   add_format_option(app, options->format, {Format::text, Format::json, Format::csv});
   app.add_flag("--brief", options->brief, "Text with one line a frame. Default: a paragraph.");
-  app.add_flag("--tiles", options->values.tiles, "Put the map of blur over the frame into the JSON. Default: off.");
+  app.add_flag("--tiles", options->tiles, "Put the map of blur over the frame into the JSON. Default: off.");
+  app.add_option("--overlay", options->overlay,
+                 "Folder for a picture of each frame (PNG, long side at most 1600 px): contours of blur, aim, line of best "
+                 "focus, motion, clipped parts. Default: none.")
+      ->type_name("DIR");
   app.add_option("--level", options->values.level, "How much of a frame is measured: full or aim-only. Default: full.")
       ->transform(CLI::CheckedTransformer(std::map<std::string, MeasureLevel>{{"full", MeasureLevel::full},
                                                                              {"aim-only", MeasureLevel::aim_only}})
@@ -129,7 +158,10 @@ std::function<ExitCode()> add_check(CLI::App& app) {
       ->type_name("COUNT");
   add_value_options(app, options->values);
   add_settings_options(app, options->settings);
-  return [options] { return CheckRun(*options).run(); };
+  return [options] {
+    options->values.tiles = options->tiles || !options->overlay.empty();
+    return CheckRun(*options).run();
+  };
 }
 
 }  // namespace focusfall
