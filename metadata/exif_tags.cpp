@@ -158,7 +158,9 @@ std::vector<std::uint8_t> ExifTags::structure(std::string_view group, std::size_
   return whole;
 }
 
-bool ExifTags::maker_note_is_big_endian() const { return text("Exif.MakerNote.ByteOrder") == "MM"; }
+bool ExifTags::maker_note_is_big_endian() const {
+  return text("Exif.MakerNote.ByteOrder") == "MM";
+}
 
 std::vector<std::uint8_t> ExifTags::bytes(std::string_view key) const {
   const Exiv2::Value* value = find(key);

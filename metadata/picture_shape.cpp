@@ -14,12 +14,17 @@ double shape(DecodedSize size) {
 
 }  // namespace
 
-bool is_known(DecodedSize size) { return size.width_px > 0 && size.height_px > 0; }
+bool is_known(DecodedSize size) {
+  return size.width_px > 0 && size.height_px > 0;
+}
 
-bool same_shape(DecodedSize a, DecodedSize b) { return std::abs(shape(a) / shape(b) - 1) < kSameShape; }
+bool same_shape(DecodedSize a, DecodedSize b) {
+  return std::abs(shape(a) / shape(b) - 1) < kSameShape;
+}
 
 bool is_turned(DecodedSize a, DecodedSize b) {
-  return (a.width_px > a.height_px && b.width_px < b.height_px) || (a.width_px < a.height_px && b.width_px > b.height_px);
+  return (a.width_px > a.height_px && b.width_px < b.height_px) ||
+         (a.width_px < a.height_px && b.width_px > b.height_px);
 }
 
 }  // namespace focusfall

@@ -26,23 +26,35 @@ constexpr double kEquivalentBound = 0.04;
 // Two rules that differ by more do not speak of the same picture.
 constexpr double kAgreement = 0.08;
 
-double long_side(DecodedSize size) { return std::max(size.width_px, size.height_px); }
-double short_side(DecodedSize size) { return std::min(size.width_px, size.height_px); }
+double long_side(DecodedSize size) {
+  return std::max(size.width_px, size.height_px);
+}
+double short_side(DecodedSize size) {
+  return std::min(size.width_px, size.height_px);
+}
 
-CoarseValue with_bound(double value, double bound) { return {value, value * (1 - bound), value * (1 + bound)}; }
+CoarseValue with_bound(double value, double bound) {
+  return {value, value * (1 - bound), value * (1 + bound)};
+}
 
 void remark_unknown(std::string reason, Remarks& remarks) {
-  remarks.push_back({kPitchUnknown, reason + " The pixel pitch is taken as not known; --pixel-pitch or --sensor says it."});
+  remarks.push_back(
+      {kPitchUnknown, reason + " The pixel pitch is taken as not known; --pixel-pitch or --sensor says it."});
 }
 
 // FocalPlaneResolutionUnit as micrometres: 2 inch and 3 centimetre are the standard's; 4 and 5 occur in real files.
 std::optional<double> unit_um(int unit) {
   switch (unit) {
-    case 2: return 25400;
-    case 3: return 10000;
-    case 4: return 1000;
-    case 5: return 1;
-    default: return std::nullopt;
+    case 2:
+      return 25400;
+    case 3:
+      return 10000;
+    case 4:
+      return 1000;
+    case 5:
+      return 1;
+    default:
+      return std::nullopt;
   }
 }
 
@@ -77,9 +89,9 @@ std::optional<double> focal_plane_pitch(const PitchEvidence& e) {
 }
 
 // Pitch of the recorded pixels by the 35 mm equivalent. In a crop mode the equivalent is that of the part that was
-// recorded, and so is the diagonal. Makers mean the diagonal (CIPA DCG-001), or the width; for 4:3 and 3:2 that is the
-// same to 4 %, for other shapes the truth lies anywhere between: a square frame of a phone of 1.5 um pixels reads 1.33 um
-// by the diagonal.
+// recorded, and so is the diagonal. Makers mean the diagonal, or the width; for 4:3 and 3:2 that is the
+// same to 4 %, for other shapes the truth lies anywhere between: a square frame of a phone of 1.5 um pixels reads 1.33
+// um by the diagonal.
 std::optional<CoarseValue> equivalent_pitch(const PitchEvidence& e, DecodedSize size) {
   if (!e.focal_length_mm || !e.equivalent_mm || *e.equivalent_mm <= 0 || *e.focal_length_mm <= 0) return std::nullopt;
   const double scale = *e.focal_length_mm / *e.equivalent_mm * 1000;
@@ -155,7 +167,8 @@ std::optional<CoarseValue> pixel_pitch_um(const PitchEvidence& e, Remarks& remar
     return std::nullopt;
   }
   const bool confirmed = by_equivalent || e.sensor_active_width_px;
-  CoarseValue pitch = by_plane ? with_bound(*by_plane, confirmed ? kConfirmedBound : kUnconfirmedBound) : *by_equivalent;
+  CoarseValue pitch =
+      by_plane ? with_bound(*by_plane, confirmed ? kConfirmedBound : kUnconfirmedBound) : *by_equivalent;
   for (double* value : {&pitch.value, &pitch.low, &pitch.high}) *value *= to_delivered;
   return plausible(pitch.value, kPixelPitch, remarks) ? std::optional(pitch) : std::nullopt;
 }
@@ -181,7 +194,7 @@ PitchEvidence pitch_evidence(const ExifTags& tags, DecodedSize decoded) {
     if (unit) evidence.focal_plane_unit = static_cast<int>(std::clamp<std::int64_t>(*unit, 0, 100));
   }
   evidence.equivalent_mm = tags.real("Exif.Photo.FocalLengthIn35mmFilm");
-  if (evidence.equivalent_mm && *evidence.equivalent_mm <= 0) evidence.equivalent_mm.reset();   // 0: not known
+  if (evidence.equivalent_mm && *evidence.equivalent_mm <= 0) evidence.equivalent_mm.reset();  // 0: not known
   evidence.rewritten =
       always_writes_note(tags.text("Exif.Image.Make").value_or("")) && !tags.has("Exif.Photo.MakerNote");
   evidence.digital_zoom = tags.real("Exif.Photo.DigitalZoomRatio");

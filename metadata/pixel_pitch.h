@@ -23,10 +23,10 @@ struct PitchEvidence {
   std::optional<int> sensor_active_width_px;    // maker note: columns of the sensor that make pictures
   std::optional<double> sensor_diagonal_mm;     // maker note: of the whole sensor, 4:3
   std::optional<double> focal_length_mm;
-  std::optional<double> equivalent_mm;          // FocalLengthIn35mmFilm
-  std::optional<double> digital_zoom;           // DigitalZoomRatio
-  bool rewritten = false;                       // the maker note is gone that this maker's cameras always write
-  bool reduced_by_camera = false;               // maker note: a smaller picture of the whole sensor was asked for
+  std::optional<double> equivalent_mm;  // FocalLengthIn35mmFilm
+  std::optional<double> digital_zoom;   // DigitalZoomRatio
+  bool rewritten = false;               // the maker note is gone that this maker's cameras always write
+  bool reduced_by_camera = false;       // maker note: a smaller picture of the whole sensor was asked for
 };
 
 // Pitch of the delivered (decoded) pixels, um, with 95 % bounds. Absent where nothing is recorded, and, with a remark,

@@ -1,7 +1,7 @@
 #include "metadata/read_capture.h"
 
-#include <exiv2/exiv2.hpp>
 #include <fmt/format.h>
+#include <exiv2/exiv2.hpp>
 
 #include <algorithm>
 #include <cmath>
@@ -42,19 +42,22 @@ ParsedFile parse(std::span<const std::byte> file, Remarks& remarks) {
   if (file.empty() || file.size() > static_cast<std::size_t>(std::numeric_limits<long>::max())) return parsed;
   const std::lock_guard lock(parser_mutex());
   try {
-    auto image = Exiv2::ImageFactory::open(reinterpret_cast<const Exiv2::byte*>(file.data()),
-                                           static_cast<long>(file.size()));
+    auto image =
+        Exiv2::ImageFactory::open(reinterpret_cast<const Exiv2::byte*>(file.data()), static_cast<long>(file.size()));
     try {
       image->readMetadata();
     } catch (const std::exception& error) {
-      remarks.push_back({kMetadataUnreadable, fmt::format("The capture data are damaged ({}); what could be read before "
-                                                          "is used.", error.what())});
+      remarks.push_back(
+          {kMetadataUnreadable, fmt::format("The capture data are damaged ({}); what could be read before "
+                                            "is used.",
+                                            error.what())});
     }
     parsed.exif = image->exifData();
     parsed.xmp = image->xmpData();
   } catch (const std::exception& error) {
     remarks.push_back({kMetadataUnreadable, fmt::format("No capture data can be read ({}); expected Exif or XMP in a "
-                                                        "picture format.", error.what())});
+                                                        "picture format.",
+                                                        error.what())});
   }
   return parsed;
 }
@@ -87,7 +90,14 @@ void merge_focus_distance(const MakerNote& note, Capture& capture, Remarks& rema
   fill(capture.focus_distance, usable(note.rough_focus_distance), Source::maker_note);
 }
 
+// Lenses and bodies without a number write zeros; two of these are not the same thing.
+void drop_serial_of_zeros(OptionalSourced<std::string>& serial) {
+  if (serial && serial->value.find_first_not_of("0 .-") == std::string::npos) serial.reset();
+}
+
 void merge_note(const MakerNote& note, Capture& capture, Remarks& remarks) {
+  drop_serial_of_zeros(capture.body_serial);
+  drop_serial_of_zeros(capture.lens_serial);
   fill(capture.body_serial, note.body_serial, Source::maker_note);
   fill(capture.lens, note.lens, Source::maker_note);
   fill(capture.lens_serial, note.lens_serial, Source::maker_note);
@@ -110,9 +120,10 @@ void merge_note(const MakerNote& note, Capture& capture, Remarks& remarks) {
     if (lies_in_frame(area)) {
       capture.focus_areas.push_back({area, FocusAreaKind::focus_area, Source::maker_note});
     } else {
-      remark_absurd("focus area", fmt::format("{:.3g} x {:.3g} of the frame at {:.3g}, {:.3g}", area.width, area.height,
-                                              area.x, area.y),
-                    "a place inside the frame", remarks);
+      remark_absurd(
+          "focus area",
+          fmt::format("{:.3g} x {:.3g} of the frame at {:.3g}, {:.3g}", area.width, area.height, area.x, area.y),
+          "a place inside the frame", remarks);
     }
   }
 }
@@ -127,17 +138,19 @@ void derive_pitch(const ExifTags& tags, DecodedSize decoded, const MakerNote& no
   fill(reading.capture.pixel_pitch_um, pixel_pitch_um(evidence, reading.remarks), Source::derived);
 }
 
-// Areas that the camera recorded have their place in the picture that it wrote; one that was cropped or turned since has
-// its subject elsewhere. Regions of XMP are for programs to keep in order.
+// Areas that the camera recorded have their place in the picture that it wrote; one that was cropped or turned since
+// has its subject elsewhere. Regions of XMP are for programs to keep in order.
 void drop_misplaced_areas(DecodedSize recorded, DecodedSize decoded, CaptureReading& reading) {
   if (!is_known(recorded) || !is_known(decoded)) return;
   if (same_shape(recorded, decoded) && !is_turned(recorded, decoded)) return;
-  const auto dropped = std::erase_if(reading.capture.focus_areas, [](const FocusArea& area) { return area.source != Source::xmp; });
+  const auto dropped =
+      std::erase_if(reading.capture.focus_areas, [](const FocusArea& area) { return area.source != Source::xmp; });
   if (dropped == 0) return;
-  reading.remarks.push_back({kFocusAreaMisplaced,
-                             fmt::format("The camera recorded {} x {} px and the picture holds {} x {} px: it was cropped "
-                                         "or turned, and the focus area is not where it was.",
-                                         recorded.width_px, recorded.height_px, decoded.width_px, decoded.height_px)});
+  reading.remarks.push_back(
+      {kFocusAreaMisplaced,
+       fmt::format("The camera recorded {} x {} px and the picture holds {} x {} px: it was cropped "
+                   "or turned, and the focus area is not where it was.",
+                   recorded.width_px, recorded.height_px, decoded.width_px, decoded.height_px)});
 }
 
 void interpret(const ParsedFile& parsed, DecodedSize decoded, CaptureReading& reading) {
@@ -145,15 +158,19 @@ void interpret(const ParsedFile& parsed, DecodedSize decoded, CaptureReading& re
   const ExifTags tags(parsed.exif);
   read_standard_exif(tags, decoded, capture, reading.remarks);
 
-  const NoteResult maker = read_maker_note(tags.text("Exif.Image.Make").value_or(""), note_context(tags, decoded, capture));
+  const NoteResult maker =
+      read_maker_note(tags.text("Exif.Image.Make").value_or(""), note_context(tags, decoded, capture));
   if (maker.unusable) {
-    reading.remarks.push_back({kMakerNoteUnusable, "The maker note was moved by an editor and reads as nonsense; the "
-                                                   "focus distance and the focus area in it are not used."});
+    reading.remarks.push_back({kMakerNoteUnusable,
+                               "The maker note was moved by an editor and reads as nonsense; the "
+                               "focus distance and the focus area in it are not used."});
   }
   merge_note(maker.note, capture, reading.remarks);
   fill(capture.lens, lens_by_specification(tags), Source::exif);
   read_standard_xmp(XmpTags(parsed.xmp), decoded, capture, reading.remarks);
 
+  drop_serial_of_zeros(capture.body_serial);
+  drop_serial_of_zeros(capture.lens_serial);
   drop_misplaced_areas(recorded_size(tags).value_or(DecodedSize{}), decoded, reading);
   std::ranges::stable_sort(capture.focus_areas, {}, &FocusArea::kind);
   if (capture.focus_distance && capture.focal_length_mm) {
@@ -177,8 +194,8 @@ CaptureReading read_capture(std::span<const std::byte> file, DecodedSize decoded
     const ParsedFile parsed = parse(file, reading.remarks);
     interpret(parsed, decoded, reading);
   } catch (const std::exception& error) {
-    reading.remarks.push_back({kMetadataUnreadable, fmt::format("The capture data cannot be read to their end ({}).",
-                                                                error.what())});
+    reading.remarks.push_back(
+        {kMetadataUnreadable, fmt::format("The capture data cannot be read to their end ({}).", error.what())});
   }
   return reading;
 }

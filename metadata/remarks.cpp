@@ -1,7 +1,7 @@
 #include "metadata/remarks.h"
 
-#include <cmath>
 #include <fmt/format.h>
+#include <cmath>
 
 namespace focusfall {
 
@@ -13,8 +13,8 @@ std::optional<double> plausible(double value, const Plausible& limits, Remarks& 
 }
 
 void remark_absurd(const char* name, const std::string& seen, const std::string& expected, Remarks& remarks) {
-  remarks.push_back({kValueAbsurd, fmt::format("The file gives {} as {}; expected {}. It is taken as not known.",
-                                               name, seen, expected)});
+  remarks.push_back({kValueAbsurd, fmt::format("The file gives {} as {}; expected {}. It is taken as not known.", name,
+                                               seen, expected)});
 }
 
 }  // namespace focusfall

@@ -24,7 +24,8 @@ constexpr int kLastYear = 2150;
 constexpr std::int64_t kAllBits = 0xFFFFFFFF;
 
 // A quantity from its tag. What is no number, n/0 and 0/0 among it, is remarked.
-std::optional<double> real_or_remark(const ExifTags& tags, const char* key, const Plausible& limits, Remarks& remarks) {
+std::optional<double> real_or_remark(const ExifTags& tags, std::string_view key, const Plausible& limits,
+                                     Remarks& remarks) {
   if (!tags.has(key)) return std::nullopt;
   const auto value = tags.real(key);
   if (value) return plausible(*value, limits, remarks);
@@ -53,9 +54,9 @@ std::optional<std::string> first_text(const ExifTags& tags, std::initializer_lis
 // ---- who ------------------------------------------------------------------------------------------------------------
 
 // What companies call themselves beside their name, left away at its end.
-constexpr std::array<std::string_view, 12> kCompanyWords = {"CORPORATION", "CORP.",    "CORP",   "IMAGING",
-                                                            "OPTICAL",     "COMPANY",  "CO.,LTD", "CO.,LTD.",
-                                                            "Co., Ltd.",   "CO., LTD.", "CAMERA", "AG"};
+constexpr std::array<std::string_view, 12> kCompanyWords = {"CORPORATION", "CORP.",     "CORP",    "IMAGING",
+                                                            "OPTICAL",     "COMPANY",   "CO.,LTD", "CO.,LTD.",
+                                                            "Co., Ltd.",   "CO., LTD.", "CAMERA",  "AG"};
 
 std::string without_company_words(std::string make) {
   for (bool again = true; again;) {
@@ -89,8 +90,9 @@ std::optional<std::string> camera_name(const ExifTags& tags) {
 
 void read_identity(const ExifTags& tags, Capture& capture) {
   set(capture.camera, camera_name(tags));
-  // Bodies write "----" for a lens that does not tell its name.
-  if (auto lens = tags.text("Exif.Photo.LensModel"); lens && lens->find_first_not_of("- ") != std::string::npos) {
+  // Bodies write "----" or "0.0 mm f/0.0" for a lens that does not tell its name.
+  if (auto lens = tags.text("Exif.Photo.LensModel");
+      lens && lens->find_first_not_of("- ") != std::string::npos && !lens->starts_with("0.0 mm")) {
     set(capture.lens, lens);
   }
   set(capture.lens_serial, first_text(tags, {"Exif.Photo.LensSerialNumber"}));
@@ -150,30 +152,47 @@ void read_f_number(const ExifTags& tags, Capture& capture, Remarks& remarks) {
 // Exposure time from ExposureTime, else from the APEX value: t = 2^-Tv.
 void read_exposure_time(const ExifTags& tags, Capture& capture, Remarks& remarks) {
   for (const char* key : {"Exif.Photo.ExposureTime", "Exif.Image.ExposureTime"}) {
-    if (const auto value = real_or_remark(tags, key, kExposureTime, remarks)) return set(capture.exposure_time_s, value);
+    if (const auto value = real_or_remark(tags, key, kExposureTime, remarks))
+      return set(capture.exposure_time_s, value);
   }
   for (const char* key : {"Exif.Photo.ShutterSpeedValue", "Exif.Image.ShutterSpeedValue"}) {
     const auto apex = tags.real(key);
     if (!apex) continue;
-    if (const auto value = plausible(std::exp2(-*apex), kExposureTime, remarks)) return set(capture.exposure_time_s, value);
+    if (const auto value = plausible(std::exp2(-*apex), kExposureTime, remarks))
+      return set(capture.exposure_time_s, value);
   }
 }
 
-// Speeds above 65535 do not fit into the first tag; SensitivityType says which of the three long ones holds it (Exif 2.32,
-// table of SensitivityType). Every one of a combination gives the same speed; the first that is there is taken.
+// Speeds above 65535 do not fit into the first tag; SensitivityType says which of the three long ones holds it
+// (Exif 2.32, table of SensitivityType). Every one of a combination gives the same speed; the first that is there is
+// taken.
 std::optional<double> long_speed(const ExifTags& tags) {
   static constexpr const char* kOutput = "Exif.Photo.StandardOutputSensitivity";
   static constexpr const char* kIndex = "Exif.Photo.RecommendedExposureIndex";
   static constexpr const char* kSpeed = "Exif.Photo.ISOSpeed";
   std::vector<const char*> keys;
   switch (tags.integer("Exif.Photo.SensitivityType").value_or(0)) {
-    case 1: keys = {kOutput}; break;
-    case 2: keys = {kIndex}; break;
-    case 3: keys = {kSpeed}; break;
-    case 4: keys = {kOutput, kIndex}; break;
-    case 5: keys = {kOutput, kSpeed}; break;
-    case 6: keys = {kIndex, kSpeed}; break;
-    default: keys = {kOutput, kIndex, kSpeed}; break;
+    case 1:
+      keys = {kOutput};
+      break;
+    case 2:
+      keys = {kIndex};
+      break;
+    case 3:
+      keys = {kSpeed};
+      break;
+    case 4:
+      keys = {kOutput, kIndex};
+      break;
+    case 5:
+      keys = {kOutput, kSpeed};
+      break;
+    case 6:
+      keys = {kIndex, kSpeed};
+      break;
+    default:
+      keys = {kOutput, kIndex, kSpeed};
+      break;
   }
   for (const char* key : keys) {
     if (const auto value = tags.real(key); value && *value > 0) return value;
@@ -216,15 +235,11 @@ void read_exposure_mode(const ExifTags& tags, Capture& capture) {
   set(capture.exposure_mode, found);
 }
 
-// An APEX value whose fraction is n/0, or all bits of which are set, is written for "not known" (Exif 2.32).
-std::optional<double> apex_value(const ExifTags& tags, const std::string& key, const Plausible& limits, Remarks& remarks) {
+// A numerator of which all bits are set says "not known" (Exif 2.32, BrightnessValue); the number is signed.
+std::optional<double> brightness_or_remark(const ExifTags& tags, const std::string& key, Remarks& remarks) {
   const auto ratio = tags.ratio(key);
-  if (ratio && (ratio->denominator == 0 || ratio->numerator == -1 || ratio->numerator == kAllBits) &&
-      ratio->denominator <= 1 && ratio->denominator >= 0) {
-    return std::nullopt;
-  }
-  const auto value = tags.real(key);
-  return value ? plausible(*value, limits, remarks) : std::nullopt;
+  if (ratio && (ratio->numerator == -1 || ratio->numerator == kAllBits)) return std::nullopt;
+  return real_or_remark(tags, key, kBrightness, remarks);
 }
 
 void read_exposure(const ExifTags& tags, Capture& capture, Remarks& remarks) {
@@ -237,10 +252,10 @@ void read_exposure(const ExifTags& tags, Capture& capture, Remarks& remarks) {
   read_iso_speed(tags, capture, remarks);
   for (const std::string group : {"Exif.Photo.", "Exif.Image."}) {
     if (!capture.exposure_bias_ev) {
-      set(capture.exposure_bias_ev, apex_value(tags, group + "ExposureBiasValue", kExposureBias, remarks));
+      set(capture.exposure_bias_ev, real_or_remark(tags, group + "ExposureBiasValue", kExposureBias, remarks));
     }
     if (!capture.brightness_apex) {
-      set(capture.brightness_apex, apex_value(tags, group + "BrightnessValue", kBrightness, remarks));
+      set(capture.brightness_apex, brightness_or_remark(tags, group + "BrightnessValue", remarks));
     }
     const auto flash = tags.integer(group + "Flash");
     if (flash && !capture.flash_fired) capture.flash_fired = Sourced<bool>{(*flash & 1) != 0, Source::exif};
@@ -255,7 +270,8 @@ void read_exposure(const ExifTags& tags, Capture& capture, Remarks& remarks) {
 
 // Exif 2.32: numerator 0 is "unknown", 0xFFFFFFFF "infinity". The interval is half a unit of the last place written.
 void read_subject_distance(const ExifTags& tags, Capture& capture, Remarks& remarks) {
-  const char* key = tags.has("Exif.Photo.SubjectDistance") ? "Exif.Photo.SubjectDistance" : "Exif.Image.SubjectDistance";
+  const char* key =
+      tags.has("Exif.Photo.SubjectDistance") ? "Exif.Photo.SubjectDistance" : "Exif.Image.SubjectDistance";
   const auto ratio = tags.ratio(key);
   if (!ratio || ratio->numerator == 0) return;
   if (ratio->numerator == kAllBits) {
@@ -264,8 +280,8 @@ void read_subject_distance(const ExifTags& tags, Capture& capture, Remarks& rema
   }
   if (const auto value = real_or_remark(tags, key, kDistance, remarks)) {
     const double half_unit_m = 0.5 / static_cast<double>(std::abs(ratio->denominator));
-    capture.focus_distance =
-        Sourced<FocusDistance>{{*value, std::max(0.0, *value - half_unit_m), *value + half_unit_m, false}, Source::exif};
+    capture.focus_distance = Sourced<FocusDistance>{
+        {*value, std::max(0.0, *value - half_unit_m), *value + half_unit_m, false}, Source::exif};
   }
 }
 
@@ -301,7 +317,7 @@ std::optional<FractionRect> subject_box(const ExifTags& tags, const char* key, D
 }
 
 std::optional<DecodedSize> size_in(const ExifTags& tags, const std::string& width_key, const std::string& height_key) {
-  constexpr std::int64_t kLargestSide = 1 << 20;   // judgement: larger than any picture that can be decoded
+  constexpr std::int64_t kLargestSide = 1 << 20;  // judgement: larger than any picture that can be decoded
   const auto width = tags.integer(width_key), height = tags.integer(height_key);
   if (!width || !height || *width < 1 || *height < 1 || *width > kLargestSide || *height > kLargestSide) {
     return std::nullopt;
@@ -362,8 +378,8 @@ std::optional<std::string> lens_by_specification(const ExifTags& tags) {
   const auto shortest = tags.real(kKey, 0), longest = tags.real(kKey, 1), at_shortest = tags.real(kKey, 2),
              at_longest = tags.real(kKey, 3);
   if (!shortest || !longest || *shortest <= 0 || *longest < *shortest) return std::nullopt;
-  std::string text = *shortest == *longest ? fmt::format("{:g} mm", *shortest)
-                                           : fmt::format("{:g}-{:g} mm", *shortest, *longest);
+  std::string text =
+      *shortest == *longest ? fmt::format("{:g} mm", *shortest) : fmt::format("{:g}-{:g} mm", *shortest, *longest);
   if (at_shortest && *at_shortest > 0) {
     text += fmt::format(" f/{:g}", *at_shortest);
     if (at_longest && *at_longest > *at_shortest) text += fmt::format("-{:g}", *at_longest);
@@ -374,7 +390,8 @@ std::optional<std::string> lens_by_specification(const ExifTags& tags) {
 std::optional<DecodedSize> recorded_size(const ExifTags& tags) {
   if (const auto size = size_in(tags, "Exif.Photo.PixelXDimension", "Exif.Photo.PixelYDimension")) return size;
   // A raw file describes its pictures one by one; NewSubfileType 0 is the one at full size (TIFF 6.0).
-  for (const char* group : {"Exif.Image.", "Exif.SubImage1.", "Exif.SubImage2.", "Exif.SubImage3.", "Exif.SubImage4."}) {
+  for (const char* group :
+       {"Exif.Image.", "Exif.SubImage1.", "Exif.SubImage2.", "Exif.SubImage3.", "Exif.SubImage4."}) {
     const std::string prefix = group;
     if (tags.integer(prefix + "NewSubfileType") != 0) continue;
     if (const auto size = size_in(tags, prefix + "ImageWidth", prefix + "ImageLength")) return size;

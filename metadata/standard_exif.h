@@ -13,8 +13,7 @@ void read_standard_exif(const ExifTags& tags, DecodedSize decoded, Capture& capt
 
 // "2026:06:20 14:03:07", digits of a fraction and "+02:00" as "2026-06-20T14:03:07.25+02:00". Fraction and zone may be
 // empty; a fraction or zone that is none is left out. Absent where the text is no time of a photograph of this age.
-std::optional<std::string> iso_time(const std::string& exif_time, const std::string& fraction,
-                                    const std::string& zone);
+std::optional<std::string> iso_time(const std::string& exif_time, const std::string& fraction, const std::string& zone);
 
 // Size of the picture as the camera recorded it, long side and short side as stored; absent where it does not say.
 std::optional<DecodedSize> recorded_size(const ExifTags& tags);

@@ -53,7 +53,8 @@ void read_values(const XmpTags& tags, Capture& capture, Remarks& remarks) {
     if (capture.*row.field) continue;
     const auto value = tags.real(row.key);
     if (!value) continue;
-    if (const auto usable = plausible(*value, row.limits, remarks)) capture.*row.field = Sourced<double>{*usable, Source::xmp};
+    if (const auto usable = plausible(*value, row.limits, remarks))
+      capture.*row.field = Sourced<double>{*usable, Source::xmp};
   }
   if (const auto fired = tags.text("Xmp.exif.Flash/exif:Fired"); fired && !capture.flash_fired) {
     capture.flash_fired = Sourced<bool>{*fired == "True" || *fired == "true", Source::xmp};
@@ -80,7 +81,7 @@ void read_time(const XmpTags& tags, Capture& capture) {
 
 // Written by raw developers from a maker note, rounded in ways of their own: the last resort, with little trust.
 void read_approximate_distance(const XmpTags& tags, Capture& capture, Remarks& remarks) {
-  constexpr double kBound = 0.1;             // judgement
+  constexpr double kBound = 0.1;              // judgement
   constexpr double kInfinite = 4294967295.0;  // 32 bits set
   const auto value = tags.real("Xmp.aux.ApproximateFocusDistance");
   if (capture.focus_distance || !value || *value == 0) return;
@@ -140,8 +141,8 @@ void read_mwg_regions(const XmpTags& tags, DecodedSize decoded, Capture& capture
 }
 
 // IPTC Photo Metadata 2019.1, Image Region: rectangles by their top-left corner, circles by their centre and radius
-// (rbRx, in fractions of the width); the unit must be "relative". The content type "human" stands for a face or a person
-// (newscodes/imageregiontype, from memory).
+// (rbRx, in fractions of the width); the unit must be "relative". The content type "human" stands for a face or a
+// person (newscodes/imageregiontype, from memory).
 std::optional<FractionRect> iptc_area(const XmpTags& tags, const std::string& region, DecodedSize decoded) {
   const std::string boundary = region + "/Iptc4xmpExt:RegionBoundary/Iptc4xmpExt:rb";
   if (tags.text(boundary + "Unit") != "relative") return std::nullopt;

@@ -66,6 +66,8 @@ constexpr Maker kMakers[] = {{"APPLE", kRows}};
 
 }  // namespace
 
-std::span<const Maker> apple_notes() { return kMakers; }
+std::span<const Maker> apple_notes() {
+  return kMakers;
+}
 
 }  // namespace focusfall

@@ -1,7 +1,7 @@
+#include <fmt/format.h>
 #include <algorithm>
 #include <cmath>
 #include <cstdlib>
-#include <fmt/format.h>
 #include <limits>
 
 #include "metadata/focus_distance.h"
@@ -11,13 +11,13 @@ namespace focusfall {
 namespace {
 
 // 2 lets the body choose, and it does not say what it chose.
-constexpr take::Code<FocusMode> kFocusModes[] = {{0, FocusMode::single}, {1, FocusMode::continuous},
-                                                 {3, FocusMode::manual}, {4, FocusMode::single},
+constexpr take::Code<FocusMode> kFocusModes[] = {{0, FocusMode::single},     {1, FocusMode::continuous},
+                                                 {3, FocusMode::manual},     {4, FocusMode::single},
                                                  {5, FocusMode::continuous}, {6, FocusMode::manual}};
 
 // The bit 0x100 is set by some bodies and changes nothing; 65535 is "not known".
-constexpr take::Code<bool> kStabiliser[] = {{0, false},  {256, false}, {1, true},   {2, true},   {3, true},
-                                            {4, true},   {257, true},  {258, true}, {259, true}, {260, true}};
+constexpr take::Code<bool> kStabiliser[] = {{0, false}, {256, false}, {1, true},   {2, true},   {3, true},
+                                            {4, true},  {257, true},  {258, true}, {259, true}, {260, true}};
 
 // An editor that moves the note without its offsets leaves arrays that do not begin with their own length in bytes.
 bool is_in_place(const NoteContext& context) {
@@ -25,7 +25,8 @@ bool is_in_place(const NoteContext& context) {
   const struct {
     const char* length;
     const char* group;
-  } arrays[] = {{"Exif.CanonSi.0x0000", "CanonSi"}, {"Exif.CanonCs.0x0000", "CanonCs"}, {"Exif.CanonFi.0x0000", "CanonFi"}};
+  } arrays[] = {
+      {"Exif.CanonSi.0x0000", "CanonSi"}, {"Exif.CanonCs.0x0000", "CanonCs"}, {"Exif.CanonFi.0x0000", "CanonFi"}};
   constexpr std::int64_t kSlack = 4;
   for (const auto& [length, group] : arrays) {
     const auto stated = context.tags.integer(length);
@@ -54,7 +55,8 @@ void take_distance_interval(const NoteContext& context, const char* key, MakerNo
   const auto lower_tag = context.tags.integer("Exif.CanonFi.FocusDistanceLower");
   if (note.focus_distance || !upper_tag) return;
   constexpr double kInfinite = 65535, kInfiniteNearEnd = 8191;
-  const double upper = static_cast<std::uint16_t>(*upper_tag), lower = static_cast<std::uint16_t>(lower_tag.value_or(0));
+  const double upper = static_cast<std::uint16_t>(*upper_tag),
+               lower = static_cast<std::uint16_t>(lower_tag.value_or(0));
   if (upper == 0) return;
   FocusDistance distance;
   if (upper == kInfinite && (lower == 0 || lower >= kInfiniteNearEnd)) {
@@ -94,7 +96,7 @@ void take_subject_distance(const NoteContext& context, const char* key, MakerNot
 // ---- focus area -----------------------------------------------------------------------------------------------------
 
 struct AfPoint {
-  double x = 0, y = 0;           // centre, from the centre of the AF space, y as the body counts it
+  double x = 0, y = 0;  // centre, from the centre of the AF space, y as the body counts it
   double width = 0, height = 0;
 };
 
@@ -107,7 +109,9 @@ bool bit(const std::vector<std::uint16_t>& words, std::size_t first, std::size_t
   return word < words.size() && (words[word] >> (index % 16) & 1) != 0;
 }
 
-double as_signed(std::uint16_t word) { return static_cast<std::int16_t>(word); }
+double as_signed(std::uint16_t word) {
+  return static_cast<std::int16_t>(word);
+}
 
 // EOS bodies count y upwards, PowerShot bodies downwards.
 FractionRect frame_rect(const AfPoint& point, const AfSpace& space, bool y_upwards) {
@@ -148,7 +152,9 @@ void add_areas(std::vector<FractionRect> boxes, MakerNote& note) {
   note.focus_areas = std::move(boxes);
 }
 
-bool counts_upwards(const NoteContext& context) { return context.model.find("EOS") != std::string::npos; }
+bool counts_upwards(const NoteContext& context) {
+  return context.model.find("EOS") != std::string::npos;
+}
 
 // Most points that an array can be meant to hold (judgement; bodies have up to 1053).
 constexpr std::size_t kMostPoints = 4096;
@@ -167,8 +173,8 @@ void take_af_info(const NoteContext& context, const char* key, MakerNote& note) 
   std::vector<FractionRect> boxes;
   for (std::size_t i = 0; i < valid; ++i) {
     if (!bit(words, 8 + 4 * n, i)) continue;
-    const AfPoint point{as_signed(words[8 + 2 * n + i]), as_signed(words[8 + 3 * n + i]),
-                        as_signed(words[8 + i]), as_signed(words[8 + n + i])};
+    const AfPoint point{as_signed(words[8 + 2 * n + i]), as_signed(words[8 + 3 * n + i]), as_signed(words[8 + i]),
+                        as_signed(words[8 + n + i])};
     boxes.push_back(frame_rect(point, space, counts_upwards(context)));
   }
   add_areas(std::move(boxes), note);
@@ -232,15 +238,16 @@ void take_lens_by_number(const NoteContext& context, const char* key, MakerNote&
 
 // "16-35 mm", where the lens can be changed and tells no name.
 void take_lens_range(const NoteContext& context, const char* key, MakerNote& note) {
-  const auto longest = context.tags.real(key, 0), shortest = context.tags.real(key, 1), units = context.tags.real(key, 2);
+  const auto longest = context.tags.real(key, 0), shortest = context.tags.real(key, 1),
+             units = context.tags.real(key, 2);
   if (note.lens || context.model.find("EOS") == std::string::npos) return;
   if (!longest || !shortest || !units || *units <= 0 || *shortest <= 0 || *longest < *shortest) return;
   const double low = *shortest / *units, high = *longest / *units;
   note.lens = low == high ? fmt::format("{:g} mm", low) : fmt::format("{:g}-{:g} mm", low, high);
 }
 
-// As it is engraved: ten digits on most bodies; the first ones print it as four hexadecimal digits and five decimal ones,
-// or as six.
+// As it is engraved: ten digits on most bodies; the first ones print it as four hexadecimal digits and five decimal
+// ones, or as six.
 void take_serial(const NoteContext& context, const char* key, MakerNote& note) {
   const auto number = context.tags.integer(key);
   if (note.body_serial || !number || *number <= 0) return;
@@ -303,6 +310,8 @@ constexpr Maker kMakers[] = {{"CANON", kRows, is_in_place}};
 
 }  // namespace
 
-std::span<const Maker> canon_notes() { return kMakers; }
+std::span<const Maker> canon_notes() {
+  return kMakers;
+}
 
 }  // namespace focusfall

@@ -42,6 +42,8 @@ constexpr Maker kMakers[] = {{"FUJIFILM", kRows}};
 
 }  // namespace
 
-std::span<const Maker> fujifilm_notes() { return kMakers; }
+std::span<const Maker> fujifilm_notes() {
+  return kMakers;
+}
 
 }  // namespace focusfall

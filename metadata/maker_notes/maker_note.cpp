@@ -7,9 +7,9 @@
 namespace focusfall {
 namespace {
 
-constexpr std::array kAllMakers = {apple_notes,   canon_notes,     casio_notes,  fujifilm_notes,
-                                   minolta_notes, nikon_notes,     olympus_notes, panasonic_notes,
-                                   pentax_notes,  samsung_notes,   sony_notes};
+constexpr std::array kAllMakers = {apple_notes,   canon_notes,   casio_notes,   fujifilm_notes,
+                                   minolta_notes, nikon_notes,   olympus_notes, panasonic_notes,
+                                   pentax_notes,  samsung_notes, sony_notes};
 
 std::string capitals(std::string text) {
   std::ranges::transform(text, text.begin(), [](unsigned char c) { return static_cast<char>(std::toupper(c)); });

@@ -21,27 +21,27 @@ struct MakerNote {
   std::optional<std::string> lens_serial;
   std::optional<long> sequence;
   std::optional<double> focal_length_mm;
-  std::optional<double> exposure_time_s;               // where the one in Exif is not the camera's own
+  std::optional<double> exposure_time_s;  // where the one in Exif is not the camera's own
   std::optional<double> iso_speed;
   std::optional<FocusMode> focus_mode;
   std::optional<bool> stabiliser_on;
-  std::optional<FocusDistance> focus_distance;         // better than Exif SubjectDistance
-  std::optional<FocusDistance> rough_focus_distance;   // where the file gives no better one
-  std::vector<FractionRect> focus_areas;               // unrotated frame, best first
-  std::optional<int> sensor_active_width_px;           // columns of the sensor that make pictures
-  std::optional<double> sensor_diagonal_mm;            // of the whole sensor
-  bool reduced_by_camera = false;                      // a smaller picture of the whole sensor was asked for
-  bool digital_zoom = false;                           // a part of the sensor was enlarged
+  std::optional<FocusDistance> focus_distance;        // better than Exif SubjectDistance
+  std::optional<FocusDistance> rough_focus_distance;  // where the file gives no better one
+  std::vector<FractionRect> focus_areas;              // unrotated frame, best first
+  std::optional<int> sensor_active_width_px;          // columns of the sensor that make pictures
+  std::optional<double> sensor_diagonal_mm;           // of the whole sensor
+  bool reduced_by_camera = false;                     // a smaller picture of the whole sensor was asked for
+  bool digital_zoom = false;                          // a part of the sensor was enlarged
 };
 
 // The tags of a file, and what its standard tags say about the frame that the note belongs to.
 struct NoteContext {
   const ExifTags& tags;
   std::string model;
-  DecodedSize size;                                    // recorded, else decoded
+  DecodedSize size;  // recorded, else decoded
   std::optional<double> focal_length_mm;
-  std::optional<double> equivalent_mm;                 // 35 mm equivalent
-  std::optional<double> subject_distance_m;            // Exif SubjectDistance
+  std::optional<double> equivalent_mm;       // 35 mm equivalent
+  std::optional<double> subject_distance_m;  // Exif SubjectDistance
 };
 
 // One value of a maker note. `take` reads the tag `key` into its field, and leaves the field alone where the tag is

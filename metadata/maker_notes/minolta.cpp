@@ -6,8 +6,8 @@ namespace {
 
 // Millimetres; 0 is infinity.
 void take_focus_distance(const NoteContext& context, const char* key, MakerNote& note) {
-  constexpr double kBound = 0.1;          // judgement
-  constexpr double kInfinityFromM = 10;   // judgement: compacts with short lenses
+  constexpr double kBound = 0.1;         // judgement
+  constexpr double kInfinityFromM = 10;  // judgement: compacts with short lenses
   const auto number = context.tags.integer(key);
   if (note.rough_focus_distance || !number || *number < 0) return;
   note.rough_focus_distance = *number == 0 ? distance_at_infinity(kInfinityFromM)
@@ -33,10 +33,16 @@ constexpr NoteRow kRows[] = {
     {"Exif.Minolta.ImageStabilization", take::stabiliser<kStabiliser>},
 };
 
-constexpr Maker kMakers[] = {{"MINOLTA", kRows}, {"KONICA", kRows}};
+bool is_in_place(const NoteContext& context) {
+  return offsets_lie_in_note(context, 0);
+}
+
+constexpr Maker kMakers[] = {{"MINOLTA", kRows, is_in_place}, {"KONICA", kRows, is_in_place}};
 
 }  // namespace
 
-std::span<const Maker> minolta_notes() { return kMakers; }
+std::span<const Maker> minolta_notes() {
+  return kMakers;
+}
 
 }  // namespace focusfall

@@ -22,7 +22,9 @@ constexpr LensDataKeys kLensData[] = {
 };
 
 // Focal length as 5 mm x 2^(v/24).
-double focal_length_of(double code) { return 5 * std::exp2(code / 24); }
+double focal_length_of(double code) {
+  return 5 * std::exp2(code / 24);
+}
 
 // The noise passes this test by chance in about one of fifteen values.
 bool decrypted_focal_length_fits(double code, const NoteContext& context) {
@@ -38,7 +40,9 @@ bool is_readable(const LensDataKeys& keys, const NoteContext& context) {
 }
 
 // Metres as 0.01 x 10^(v/40).
-double distance_of(double code) { return 0.01 * std::pow(10, code / 40); }
+double distance_of(double code) {
+  return 0.01 * std::pow(10, code / 40);
+}
 
 // One step of v is 5.9 %; the reading is within half of one.
 constexpr double kStepBound = 0.03;
@@ -48,15 +52,17 @@ constexpr double kFineBound = 0.02;
 // The last step but one before infinity: 10^(254/40) x 0.01 m would be 22 km; the lenses stop long before.
 constexpr double kFarthestStep = 255;
 
-FocusDistance nikon_infinity(double bound) { return distance_at_infinity(distance_of(kFarthestStep / 2) * (1 - bound)); }
+FocusDistance nikon_infinity(double bound) {
+  return distance_at_infinity(distance_of(kFarthestStep / 2) * (1 - bound));
+}
 
 template <std::size_t layout>
 void take_distance(const NoteContext& context, const char* key, MakerNote& note) {
   const LensDataKeys& keys = kLensData[layout];
   const auto code = context.tags.integer(key);
   if (note.focus_distance || !code || !is_readable(keys, context)) return;
-  note.focus_distance = *code == 0 ? nikon_infinity(kStepBound)
-                                   : distance_within(distance_of(static_cast<double>(*code)), kStepBound);
+  note.focus_distance =
+      *code == 0 ? nikon_infinity(kStepBound) : distance_within(distance_of(static_cast<double>(*code)), kStepBound);
 }
 
 // Lenses of the newest mount: the structure is read by its offsets. 0x35: 1 for these lenses; 0x3c: focal length in mm;
@@ -65,7 +71,7 @@ void take_fine_distance(const NoteContext& context, const char*, MakerNote& note
   const auto bytes = context.tags.structure("NikonLd4");
   constexpr std::size_t kEnd = 0x50;
   if (note.focus_distance || bytes.size() < kEnd || bytes[0x35] != 1 || !context.focal_length_mm) return;
-  const auto focal_length = two_bytes(bytes, 0x3c, false);   // this part is little-endian in every file
+  const auto focal_length = two_bytes(bytes, 0x3c, false);  // this part is little-endian in every file
   if (std::abs(focal_length.value_or(0) - *context.focal_length_mm) > 0.06 * *context.focal_length_mm + 0.5) return;
   if (bytes[0x4c] == 0) {
     note.focus_distance = nikon_infinity(kFineBound);
@@ -94,7 +100,7 @@ void take_lens_range(const NoteContext& context, const char* key, MakerNote& not
 
 // Where the picture's width in AF pixels stands; height, centre x, centre y, width, height of the area follow.
 struct AreaLayout {
-  std::string_view version;      // the first characters of the structure
+  std::string_view version;  // the first characters of the structure
   std::size_t offset;
 };
 constexpr AreaLayout kAreaLayouts[] = {{"0100", 0x10}, {"0101", 0x46}, {"03", 0x2a}, {"0400", 0x3e}};
@@ -146,7 +152,7 @@ void take_focus_mode(const NoteContext& context, const char* key, MakerNote& not
 // First byte of the structure.
 constexpr take::Code<bool> kStabiliser[] = {{1, true}, {2, false}};
 
-constexpr std::int64_t kNoCount = 4294965247;   // written by bodies that do not tell
+constexpr std::int64_t kNoCount = 4294965247;  // written by bodies that do not tell
 
 constexpr NoteRow kRows[] = {
     {"Exif.NikonLd4.Version", take_fine_distance},
@@ -169,6 +175,8 @@ constexpr Maker kMakers[] = {{"NIKON", kRows}};
 
 }  // namespace
 
-std::span<const Maker> nikon_notes() { return kMakers; }
+std::span<const Maker> nikon_notes() {
+  return kMakers;
+}
 
 }  // namespace focusfall

@@ -8,7 +8,7 @@ namespace {
 // not told.
 void take_focus_distance(const NoteContext& context, const char* key, MakerNote& note) {
   constexpr std::int64_t kNone = 0xFFFFFFF0;
-  constexpr double kBound = 0.05;   // judgement: a lens encoder, better than those that write in steps of 6 %
+  constexpr double kBound = 0.05;  // judgement: a lens encoder, better than those that write in steps of 6 %
   const auto ratio = context.tags.ratio(key);
   if (note.focus_distance || !ratio || ratio->numerator <= 0 || ratio->numerator >= kNone) return;
   note.focus_distance = distance_within(static_cast<double>(ratio->numerator) / 1000, kBound);
@@ -78,6 +78,8 @@ constexpr Maker kMakers[] = {{"OLYMPUS", kRows}, {"OM DIGITAL", kRows}};
 
 }  // namespace
 
-std::span<const Maker> olympus_notes() { return kMakers; }
+std::span<const Maker> olympus_notes() {
+  return kMakers;
+}
 
 }  // namespace focusfall

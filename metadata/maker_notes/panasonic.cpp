@@ -26,12 +26,16 @@ constexpr NoteRow kRows[] = {
 };
 
 // "Panasonic" and three NUL bytes stand before the directory.
-bool is_in_place(const NoteContext& context) { return offsets_lie_in_note(context, 12); }
+bool is_in_place(const NoteContext& context) {
+  return offsets_lie_in_note(context, 12);
+}
 
 constexpr Maker kMakers[] = {{"PANASONIC", kRows, is_in_place}, {"LEICA", kRows}};
 
 }  // namespace
 
-std::span<const Maker> panasonic_notes() { return kMakers; }
+std::span<const Maker> panasonic_notes() {
+  return kMakers;
+}
 
 }  // namespace focusfall

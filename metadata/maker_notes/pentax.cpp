@@ -21,10 +21,21 @@ constexpr NoteRow kRows[] = {
     {"Exif.PentaxDng.SerialNumber", take::text<&MakerNote::body_serial>},
 };
 
-constexpr Maker kMakers[] = {{"PENTAX", kRows}, {"ASAHI", kRows}, {"RICOH", kRows}};
+// Notes that begin with "AOC" have their directory at byte 6 and count from the start of the TIFF header; the later
+// ones count from their own start and can be moved.
+bool is_in_place(const NoteContext& context) {
+  const auto note = context.tags.bytes("Exif.Photo.MakerNote");
+  const bool counts_from_header = note.size() > 6 && note[0] == 'A' && note[1] == 'O' && note[2] == 'C';
+  return !counts_from_header || offsets_lie_in_note(context, 6);
+}
+
+constexpr Maker kMakers[] = {
+    {"PENTAX", kRows, is_in_place}, {"ASAHI", kRows, is_in_place}, {"RICOH", kRows, is_in_place}};
 
 }  // namespace
 
-std::span<const Maker> pentax_notes() { return kMakers; }
+std::span<const Maker> pentax_notes() {
+  return kMakers;
+}
 
 }  // namespace focusfall

@@ -8,6 +8,8 @@ constexpr Maker kMakers[] = {{"SAMSUNG", kRows}};
 
 }  // namespace
 
-std::span<const Maker> samsung_notes() { return kMakers; }
+std::span<const Maker> samsung_notes() {
+  return kMakers;
+}
 
 }  // namespace focusfall

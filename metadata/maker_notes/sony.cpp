@@ -20,10 +20,11 @@ bool has_e_mount(const std::string& model) {
 // (2^(v/16 - 5) + 1) x the 35 mm equivalent in m: a magnification, so that it is rough. 255: infinity.
 void take_focus_position(const NoteContext& context, const char* key, MakerNote& note) {
   constexpr std::int64_t kInfinite = 255, kLeast = 16;
-  constexpr double kBound = 0.25;   // judgement
+  constexpr double kBound = 0.25;  // judgement
   const auto v = context.tags.integer(key);
   const auto& equivalent = context.equivalent_mm;
-  if (note.rough_focus_distance || !v || *v < kLeast || !equivalent || *equivalent <= 0 || !has_e_mount(context.model)) {
+  if (note.rough_focus_distance || !v || *v < kLeast || !equivalent || *equivalent <= 0 ||
+      !has_e_mount(context.model)) {
     return;
   }
   const auto distance = [&](double position) { return (std::exp2(position / 16 - 5) + 1) * *equivalent / 1000; };
@@ -62,7 +63,8 @@ void take_flexible_spot(const NoteContext& context, const char* key, MakerNote& 
   constexpr std::int64_t kFlexibleSpot = 3;
   constexpr double kWidth = 640, kHeight = 480;
   const auto x = context.tags.real(key, 0), y = context.tags.real(key, 1);
-  if (!note.focus_areas.empty() || note.focus_mode == FocusMode::manual || !has_e_mount(context.model) || !x || !y) return;
+  if (!note.focus_areas.empty() || note.focus_mode == FocusMode::manual || !has_e_mount(context.model) || !x || !y)
+    return;
   if (context.tags.integer("Exif.Sony1.0x201c") != kFlexibleSpot || *x <= 0 || *y <= 0) return;
   if (*x < kWidth && *y < kHeight) note.focus_areas.push_back({*x / kWidth, *y / kHeight, 0, 0});
 }
@@ -75,7 +77,8 @@ constexpr take::Code<FocusMode> kFocusModes[] = {
 
 // Compacts write 0 in this tag whatever they do, but for the newest.
 void take_focus_mode(const NoteContext& context, const char* key, MakerNote& note) {
-  constexpr std::array kNewCompacts = {"DSC-RX10M4", "DSC-RX100M6", "DSC-RX100M7", "DSC-RX100M5A", "DSC-HX99", "DSC-RX0M2"};
+  constexpr std::array kNewCompacts = {"DSC-RX10M4",   "DSC-RX100M6", "DSC-RX100M7",
+                                       "DSC-RX100M5A", "DSC-HX99",    "DSC-RX0M2"};
   const bool meant = !context.model.starts_with("DSC-") ||
                      std::ranges::any_of(kNewCompacts, [&](const char* m) { return context.model.starts_with(m); });
   if (!note.focus_mode && meant) note.focus_mode = meaning(kFocusModes, context.tags.integer(key));
@@ -110,6 +113,8 @@ constexpr Maker kMakers[] = {{"SONY", kRows, is_in_place}};
 
 }  // namespace
 
-std::span<const Maker> sony_notes() { return kMakers; }
+std::span<const Maker> sony_notes() {
+  return kMakers;
+}
 
 }  // namespace focusfall

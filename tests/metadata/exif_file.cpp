@@ -53,7 +53,9 @@ std::vector<std::byte> ExifFile::jpeg() const {
   return jpeg_around({blob.begin(), blob.end()}, xmp);
 }
 
-CaptureReading ExifFile::read() const { return read_capture(jpeg(), decoded); }
+CaptureReading ExifFile::read() const {
+  return read_capture(jpeg(), decoded);
+}
 
 bool has_remark(const CaptureReading& reading, const std::string& code) {
   return std::ranges::any_of(reading.remarks, [&](const CaptureRemark& remark) { return remark.code == code; });

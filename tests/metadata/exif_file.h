@@ -13,7 +13,7 @@ namespace focusfall {
 
 struct ExifFile {
   Exiv2::ExifData exif;
-  std::string xmp;              // an XMP packet; empty: none
+  std::string xmp;  // an XMP packet; empty: none
   DecodedSize decoded{6000, 4000};
 
   // Sets a tag from its text, in the type that the tag has by the standard: "28/10", "200 0", "Nikon".

@@ -1,5 +1,5 @@
-// ExifTool (Debian package libimage-exiftool-perl), an implementation of its own, reads the same files: every value that
-// both give must agree. Each set prints how often each field agreed.
+// ExifTool (Debian package libimage-exiftool-perl), an implementation of its own, reads the same files: every value
+// that both give must agree. Each set prints how often each field agreed.
 #include <fmt/format.h>
 #include <gtest/gtest.h>
 
@@ -31,7 +31,8 @@ std::string output_of(const std::string& command) {
   const std::unique_ptr<FILE, int (*)(FILE*)> pipe(::popen(command.c_str(), "r"), ::pclose);
   std::string output;
   std::array<char, 65536> part{};
-  for (std::size_t n = 0; pipe && (n = std::fread(part.data(), 1, part.size(), pipe.get())) > 0;) output.append(part.data(), n);
+  for (std::size_t n = 0; pipe && (n = std::fread(part.data(), 1, part.size(), pipe.get())) > 0;)
+    output.append(part.data(), n);
   return output;
 }
 
@@ -51,7 +52,8 @@ std::vector<OtherReading> read_with_exiftool(const std::vector<fs::path>& files)
   std::string names;
   for (const fs::path& file : files) names += fmt::format(" {}", quoted(file.string()));
   const auto run = [&](const char* form) {
-    return Json::parse(output_of(fmt::format("exiftool -q -q -G1 -json {}{} 2>/dev/null", form, names)), nullptr, false);
+    return Json::parse(output_of(fmt::format("exiftool -q -q -G1 -json {}{} 2>/dev/null", form, names)), nullptr,
+                       false);
   };
   const Json numbers = run("-n"), words = run("");
   std::vector<OtherReading> readings;
@@ -150,7 +152,9 @@ class Table {
 
 // Rationals go through decimal text of ten digits in ExifTool, and the f-numbers of the first raw files through
 // fractions of half a millionth in Exiv2.
-bool same_number(double a, double b) { return std::abs(a - b) <= 2e-7 * std::max(std::abs(a), std::abs(b)); }
+bool same_number(double a, double b) {
+  return std::abs(a - b) <= 2e-7 * std::max(std::abs(a), std::abs(b));
+}
 
 template <class T>
 std::optional<T> plain(const OptionalSourced<T>& value) {
@@ -158,7 +162,9 @@ std::optional<T> plain(const OptionalSourced<T>& value) {
 }
 
 // A value of 0 is how files say "not known".
-std::optional<double> above_zero(std::optional<double> value) { return value && *value > 0 ? value : std::nullopt; }
+std::optional<double> above_zero(std::optional<double> value) {
+  return value && *value > 0 ? value : std::nullopt;
+}
 
 // Both ends of what ExifTool knows of the focus distance, m; infinity as infinity.
 struct Distance {
@@ -187,10 +193,9 @@ std::optional<Distance> exiftool_distance(const Json& tags) {
 }
 
 std::optional<FocusMode> exiftool_focus_mode(const Json& tags, bool& says_nothing) {
-  const std::string mode =
-      words(tags, {"Canon:FocusMode", "Nikon:FocusMode", "Sony:FocusMode", "Olympus:FocusMode", "Panasonic:FocusMode",
-                   "FujiFilm:FocusMode", "Pentax:FocusMode"})
-          .value_or("");
+  const std::string mode = words(tags, {"Canon:FocusMode", "Nikon:FocusMode", "Sony:FocusMode", "Olympus:FocusMode",
+                                        "Panasonic:FocusMode", "FujiFilm:FocusMode", "Pentax:FocusMode"})
+                               .value_or("");
   says_nothing = mode.empty();
   const auto starts = [&](const char* text) { return mode.starts_with(text); };
   if (starts("Manual") || starts("MF")) return FocusMode::manual;
@@ -209,7 +214,8 @@ std::optional<bool> exiftool_stabiliser(const Json& tags) {
 
 // "2026:06:20 14:03:07" and the like, as far as the second.
 std::optional<std::string> exiftool_time(const Json& tags) {
-  auto time = words(tags, {"ExifIFD:DateTimeOriginal", "IFD0:DateTimeOriginal", "ExifIFD:CreateDate", "XMP-exif:DateTimeOriginal"});
+  auto time = words(
+      tags, {"ExifIFD:DateTimeOriginal", "IFD0:DateTimeOriginal", "ExifIFD:CreateDate", "XMP-exif:DateTimeOriginal"});
   if (!time || time->size() < 19 || time->find_first_of("123456789") == std::string::npos) return std::nullopt;
   std::string iso = time->substr(0, 19);
   iso[4] = iso[7] = '-';
@@ -224,7 +230,8 @@ struct Centre {
 };
 
 std::vector<double> numbers_in(std::string text) {
-  std::ranges::replace_if(text, [](char c) { return std::strchr("0123456789.-", c) == nullptr; }, ' ');
+  std::ranges::replace_if(
+      text, [](char c) { return std::strchr("0123456789.-", c) == nullptr; }, ' ');
   std::istringstream stream(text);
   std::vector<double> values;
   for (double value = 0; stream >> value;) values.push_back(value);
@@ -266,11 +273,14 @@ std::optional<Centre> our_centre(const Capture& c) {
 
 std::string small_extension(const fs::path& file) {
   std::string extension = file.extension().string();
-  std::ranges::transform(extension, extension.begin(), [](unsigned char c) { return static_cast<char>(std::tolower(c)); });
+  std::ranges::transform(extension, extension.begin(),
+                         [](unsigned char c) { return static_cast<char>(std::tolower(c)); });
   return extension;
 }
 
-bool is_jpeg(const fs::path& file) { return small_extension(file) == ".jpg" || small_extension(file) == ".jpeg"; }
+bool is_jpeg(const fs::path& file) {
+  return small_extension(file) == ".jpg" || small_extension(file) == ".jpeg";
+}
 
 Capture our_reading(const fs::path& file, const Json& tags) {
   // The first 256 KB of a JPEG hold its capture data; raw files keep them anywhere.
@@ -288,11 +298,15 @@ void compare_numbers(const Capture& c, const Json& t, const fs::path& file, Tabl
   const auto compare = [&](const char* field, std::optional<double> ours, std::optional<double> theirs) {
     table.compare(field, ours, theirs, same_number, file);
   };
-  compare("focal length", plain(c.focal_length_mm), above_zero(number(t, {"ExifIFD:FocalLength", "IFD0:FocalLength", "XMP-exif:FocalLength"})));
-  compare("f-number", plain(c.f_number), above_zero(number(t, {"ExifIFD:FNumber", "IFD0:FNumber", "XMP-exif:FNumber", "Composite:Aperture"})));
+  compare("focal length", plain(c.focal_length_mm),
+          above_zero(number(t, {"ExifIFD:FocalLength", "IFD0:FocalLength", "XMP-exif:FocalLength"})));
+  compare("f-number", plain(c.f_number),
+          above_zero(number(t, {"ExifIFD:FNumber", "IFD0:FNumber", "XMP-exif:FNumber", "Composite:Aperture"})));
   compare("exposure time", plain(c.exposure_time_s),
-          above_zero(number(t, {"ExifIFD:ExposureTime", "IFD0:ExposureTime", "XMP-exif:ExposureTime", "Composite:ShutterSpeed"})));
-  compare("ISO speed", plain(c.iso_speed), above_zero(number(t, {"ExifIFD:ISO", "IFD0:ISO", "XMP-exif:ISO", "Composite:ISO"})));
+          above_zero(number(
+              t, {"ExifIFD:ExposureTime", "IFD0:ExposureTime", "XMP-exif:ExposureTime", "Composite:ShutterSpeed"})));
+  compare("ISO speed", plain(c.iso_speed),
+          above_zero(number(t, {"ExifIFD:ISO", "IFD0:ISO", "XMP-exif:ISO", "Composite:ISO"})));
   compare("exposure bias", plain(c.exposure_bias_ev),
           number(t, {"ExifIFD:ExposureCompensation", "IFD0:ExposureCompensation", "XMP-exif:ExposureCompensation"}));
   compare("brightness", plain(c.brightness_apex), number(t, {"ExifIFD:BrightnessValue", "IFD0:BrightnessValue"}));
@@ -311,12 +325,14 @@ void compare_numbers(const Capture& c, const Json& t, const fs::path& file, Tabl
 void compare_texts(const Capture& c, const OtherReading& other, const fs::path& file, Table& table) {
   const Json& t = other.words;
   const auto same = [](const std::string& a, const std::string& b) { return a == b; };
-  table.compare("time taken", plain(c.taken_at), exiftool_time(other.numbers),
-                [](const std::string& a, const std::string& b) { return a.substr(0, 19) == b; }, file);
-  table.compare("camera", plain(c.camera), words(t, {"IFD0:Model"}),
-                [](const std::string& a, const std::string& b) { return a.ends_with(b); }, file);
-  table.compare("lens", plain(c.lens), words(t, {"ExifIFD:LensModel", "Canon:LensModel", "Olympus:LensModel", "XMP-aux:Lens"}),
-                same, file);
+  table.compare(
+      "time taken", plain(c.taken_at), exiftool_time(other.numbers),
+      [](const std::string& a, const std::string& b) { return a.substr(0, 19) == b; }, file);
+  table.compare(
+      "camera", plain(c.camera), words(t, {"IFD0:Model"}),
+      [](const std::string& a, const std::string& b) { return a.ends_with(b); }, file);
+  table.compare("lens", plain(c.lens),
+                words(t, {"ExifIFD:LensModel", "Canon:LensModel", "Olympus:LensModel", "XMP-aux:Lens"}), same, file);
   table.compare("body serial", plain(c.body_serial),
                 words(t, {"ExifIFD:SerialNumber", "Canon:SerialNumber", "Nikon:SerialNumber", "Olympus:SerialNumber",
                           "XMP-aux:SerialNumber"}),
@@ -327,16 +343,17 @@ void compare_texts(const Capture& c, const OtherReading& other, const fs::path& 
 
 void compare_focus(const Capture& c, const OtherReading& other, const fs::path& file, Table& table) {
   // ExifTool's value must lie in our interval, which holds half a step of the coarse scales.
-  table.compare("focus distance", plain(c.focus_distance), exiftool_distance(other.numbers),
-                [](const FocusDistance& ours, const Distance& theirs) {
-                  constexpr double kRounding = 1e-6;
-                  return theirs.low >= ours.low_m * (1 - kRounding) && theirs.high <= ours.high_m * (1 + kRounding);
-                },
-                file);
+  table.compare(
+      "focus distance", plain(c.focus_distance), exiftool_distance(other.numbers),
+      [](const FocusDistance& ours, const Distance& theirs) {
+        constexpr double kRounding = 1e-6;
+        return theirs.low >= ours.low_m * (1 - kRounding) && theirs.high <= ours.high_m * (1 + kRounding);
+      },
+      file);
   // Whole percents, as ExifTool prints some of them.
-  table.compare("focus area", our_centre(c), exiftool_centre(other.words),
-                [](const Centre& a, const Centre& b) { return std::abs(a.x - b.x) < 0.01 && std::abs(a.y - b.y) < 0.01; },
-                file);
+  table.compare(
+      "focus area", our_centre(c), exiftool_centre(other.words),
+      [](const Centre& a, const Centre& b) { return std::abs(a.x - b.x) < 0.01 && std::abs(a.y - b.y) < 0.01; }, file);
   bool says_nothing = false;
   const auto mode = exiftool_focus_mode(other.words, says_nothing);
   if (mode || says_nothing) {
@@ -363,7 +380,8 @@ Table agreement(const std::vector<fs::path>& files, const std::string& title) {
 }
 
 std::vector<fs::path> photographs_below(const fs::path& folder) {
-  constexpr std::array kOthers = {".tif", ".tiff", ".heic", ".dng", ".crw", ".cr2", ".cr3", ".kdc", ".nef", ".arw", ".orf", ".rw2", ".raf", ".pef"};
+  constexpr std::array kOthers = {".tif", ".tiff", ".heic", ".dng", ".crw", ".cr2", ".cr3",
+                                  ".kdc", ".nef",  ".arw",  ".orf", ".rw2", ".raf", ".pef"};
   std::vector<fs::path> files;
   std::error_code error;
   for (fs::recursive_directory_iterator it(folder, error), end; !error && it != end; it.increment(error)) {
@@ -375,9 +393,13 @@ std::vector<fs::path> photographs_below(const fs::path& folder) {
   return files;
 }
 
-bool has_exiftool() { return std::system("exiftool -ver >/dev/null 2>&1") == 0; }
+bool has_exiftool() {
+  return std::system("exiftool -ver >/dev/null 2>&1") == 0;
+}
 
-void expect_agreement(const Table& table) { EXPECT_TRUE(table.complaints.empty()) << table.complaints.size(); }
+void expect_agreement(const Table& table) {
+  EXPECT_TRUE(table.complaints.empty()) << table.complaints.size();
+}
 
 TEST(ExifToolAgreement, OverTheSampleImages) {
   if (!has_exiftool()) GTEST_SKIP() << "exiftool is not installed (Debian package libimage-exiftool-perl).";

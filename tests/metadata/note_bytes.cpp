@@ -61,29 +61,38 @@ void append_directory(Bytes& bytes, const std::vector<NoteEntry>& entries) {
 
 namespace {
 
-Bytes note_of_directories(Bytes note, const std::vector<SubDirectory>& parts) {
-  std::size_t part_at = note.size() + 2 + 12 * parts.size() + 4;
-  Bytes all(part_at, 0);   // place for what comes before the parts, so that their offsets are right
-  std::vector<NoteEntry> pointers;
+constexpr std::uint16_t kDirectoryType = 13;
+
+// The pointers are the last entries, so that `entries` must have smaller tags; all of them fit into four bytes.
+Bytes with_directories(Bytes start, std::vector<NoteEntry> entries, const std::vector<SubDirectory>& parts,
+                       std::uint16_t type) {
+  const std::size_t part_at = start.size() + 2 + 12 * (entries.size() + parts.size()) + 4;
+  Bytes all(part_at, 0);  // place for what comes before the parts, so that their offsets are right
   for (const SubDirectory& part : parts) {
-    NoteEntry pointer{part.tag, 13, 1, {}};
+    NoteEntry pointer{part.tag, type, 1, {}};
     append_four(pointer.data, all.size());
-    pointers.push_back(pointer);
+    entries.push_back(pointer);
     append_directory(all, part.entries);
   }
-  append_directory(note, pointers);
-  note.insert(note.end(), all.begin() + static_cast<std::ptrdiff_t>(part_at), all.end());
-  return note;
+  append_directory(start, entries);
+  start.insert(start.end(), all.begin() + static_cast<std::ptrdiff_t>(part_at), all.end());
+  return start;
 }
 
 }  // namespace
 
 Bytes olympus_note(const std::vector<SubDirectory>& parts) {
-  return note_of_directories({'O', 'L', 'Y', 'M', 'P', 'U', 'S', 0, 'I', 'I', 3, 0}, parts);
+  return with_directories({'O', 'L', 'Y', 'M', 'P', 'U', 'S', 0, 'I', 'I', 3, 0}, {}, parts, kDirectoryType);
 }
 
 Bytes om_system_note(const std::vector<SubDirectory>& parts) {
-  return note_of_directories({'O', 'M', ' ', 'S', 'Y', 'S', 'T', 'E', 'M', 0, 0, 0, 'I', 'I', 4, 0}, parts);
+  return with_directories({'O', 'M', ' ', 'S', 'Y', 'S', 'T', 'E', 'M', 0, 0, 0, 'I', 'I', 4, 0}, {}, parts,
+                          kDirectoryType);
+}
+
+Bytes tiff_file(const std::vector<NoteEntry>& entries, const std::vector<SubDirectory>& parts) {
+  constexpr std::uint16_t kLong = 4;
+  return with_directories({'I', 'I', 42, 0, 8, 0, 0, 0}, entries, parts, kLong);
 }
 
 }  // namespace focusfall

@@ -43,6 +43,8 @@ struct SubDirectory {
 };
 
 Bytes olympus_note(const std::vector<SubDirectory>& parts);
+// A whole TIFF file: its first directory holds `entries`, and each of `parts` as a directory.
+Bytes tiff_file(const std::vector<NoteEntry>& entries, const std::vector<SubDirectory>& parts);
 Bytes om_system_note(const std::vector<SubDirectory>& parts);
 
 }  // namespace focusfall

@@ -4,6 +4,7 @@
 #include <gtest/gtest.h>
 
 #include "tests/metadata/exif_file.h"
+#include "tests/metadata/note_bytes.h"
 
 namespace focusfall {
 namespace {
@@ -71,9 +72,9 @@ TEST(PixelPitch, RulesThatContradictEachOtherMakeItUnknown) {
 TEST(PixelPitch, AReducedPictureHasLargerPixels) {
   Remarks remarks;
   PitchEvidence evidence = with_plane(full_frame(), {5'000'000, 3000}, 3);
-  evidence.decoded = {3000, 2000};   // also a raw file decoded at half size
+  evidence.decoded = {3000, 2000};  // also a raw file decoded at half size
   EXPECT_NEAR(pixel_pitch_um(evidence, remarks)->value, 12.0, 1e-9);
-  evidence.decoded = {2000, 3000};   // turned by the decoder
+  evidence.decoded = {2000, 3000};  // turned by the decoder
   EXPECT_NEAR(pixel_pitch_um(evidence, remarks)->value, 12.0, 1e-9);
 }
 
@@ -88,7 +89,7 @@ TEST(PixelPitch, ACroppedPictureIsUnknown) {
 TEST(PixelPitch, DigitalZoomMakesItUnknown) {
   Remarks remarks;
   PitchEvidence evidence = with_equivalent(full_frame(), 50, 100);
-  evidence.digital_zoom = 0.0;   // "not used"
+  evidence.digital_zoom = 0.0;  // "not used"
   EXPECT_NEAR(pixel_pitch_um(evidence, remarks)->value, 3.0, 0.001);
   EXPECT_TRUE(remarks.empty());
   evidence.digital_zoom = 2.0;
@@ -146,6 +147,17 @@ TEST(PixelPitch, CaptureDataWrittenAnewByAnotherProgramAreNotBelieved) {
   EXPECT_FALSE(reading("Canon").capture.pixel_pitch_um);
   EXPECT_TRUE(has_remark(reading("Canon"), kPitchUnknown));
   EXPECT_TRUE(reading("A maker of no notes").capture.pixel_pitch_um);
+}
+
+TEST(PixelPitch, ARawFileDecodedAtHalfSizeCountsItsFullPicture) {
+  // First a preview of 160 x 120, then the mosaic of 6000 x 4000, then Exif: 5000 px a mm / 3 = 6 um.
+  const Bytes raw = tiff_file({longs(0x00fe, {1}), longs(0x0100, {160}), longs(0x0101, {120})},
+                              {{0x014a, {longs(0x00fe, {0}), longs(0x0100, {6000}), longs(0x0101, {4000})}},
+                               {0x8769, {rationals(0xa20e, 5, {5'000'000, 3000}), shorts(0xa210, {3})}}});
+  const std::span bytes = std::as_bytes(std::span(raw));
+  EXPECT_NEAR(read_capture(bytes, {6000, 4000}).capture.pixel_pitch_um.value().value.value, 6, 1e-9);
+  EXPECT_NEAR(read_capture(bytes, {3000, 2000}).capture.pixel_pitch_um.value().value.value, 12, 1e-9);
+  EXPECT_NEAR(read_capture(bytes, {1620, 1080}).capture.pixel_pitch_um.value().value.value, 6 * 6000 / 1620.0, 1e-9);
 }
 
 TEST(PixelPitch, ThePitchOfAFileIsDerivedFromItsTags) {

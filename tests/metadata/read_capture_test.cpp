@@ -3,11 +3,11 @@
 
 #include <gtest/gtest.h>
 
+#include <fmt/format.h>
 #include <atomic>
 #include <chrono>
 #include <cmath>
 #include <cstring>
-#include <fmt/format.h>
 #include <random>
 #include <thread>
 
@@ -38,14 +38,15 @@ ExifFile full_file(int number = 7) {
   file.set("Exif.Nikon3.ShutterCount", Exiv2::unsignedLong, "4044").set("Exif.Nikon3.Focus", "AF-C  ");
   file.set("Exif.NikonLd3.Version", "48 50 48 52").set("Exif.NikonLd3.FocalLength", "55");
   file.set("Exif.NikonLd3.FocusDistance", "68");
-  file.xmp = "<x:xmpmeta xmlns:x=\"adobe:ns:meta/\"><rdf:RDF xmlns:rdf=\"http://www.w3.org/1999/02/22-rdf-syntax-ns#\">"
-             "<rdf:Description rdf:about=\"\" xmlns:aux=\"http://ns.adobe.com/exif/1.0/aux/\" aux:LensSerialNumber=\"L" +
-             std::to_string(number) +
-             "\" xmlns:mwg-rs=\"http://www.metadataworkinggroup.com/schemas/regions/\""
-             " xmlns:stArea=\"http://ns.adobe.com/xmp/sType/Area#\"><mwg-rs:Regions rdf:parseType=\"Resource\">"
-             "<mwg-rs:RegionList><rdf:Bag><rdf:li><rdf:Description mwg-rs:Type=\"Face\"><mwg-rs:Area stArea:x=\"0.3\""
-             " stArea:y=\"0.3\" stArea:w=\"0.1\" stArea:h=\"0.1\"/></rdf:Description></rdf:li></rdf:Bag>"
-             "</mwg-rs:RegionList></mwg-rs:Regions></rdf:Description></rdf:RDF></x:xmpmeta>";
+  file.xmp =
+      "<x:xmpmeta xmlns:x=\"adobe:ns:meta/\"><rdf:RDF xmlns:rdf=\"http://www.w3.org/1999/02/22-rdf-syntax-ns#\">"
+      "<rdf:Description rdf:about=\"\" xmlns:aux=\"http://ns.adobe.com/exif/1.0/aux/\" aux:LensSerialNumber=\"L" +
+      std::to_string(number) +
+      "\" xmlns:mwg-rs=\"http://www.metadataworkinggroup.com/schemas/regions/\""
+      " xmlns:stArea=\"http://ns.adobe.com/xmp/sType/Area#\"><mwg-rs:Regions rdf:parseType=\"Resource\">"
+      "<mwg-rs:RegionList><rdf:Bag><rdf:li><rdf:Description mwg-rs:Type=\"Face\"><mwg-rs:Area stArea:x=\"0.3\""
+      " stArea:y=\"0.3\" stArea:w=\"0.1\" stArea:h=\"0.1\"/></rdf:Description></rdf:li></rdf:Bag>"
+      "</mwg-rs:RegionList></mwg-rs:Regions></rdf:Description></rdf:RDF></x:xmpmeta>";
   file.decoded = {4288, 2848};
   return file;
 }
@@ -61,7 +62,7 @@ TEST(ReadCapture, TheFullFileHoldsWhatTheFollowingTestsDamage) {
 
 TEST(ReadCapture, FocusAreasOfAPictureThatWasCroppedOrTurnedAreDropped) {
   ExifFile file = full_file();
-  file.decoded = {2144, 1424};   // reduced
+  file.decoded = {2144, 1424};  // reduced
   EXPECT_EQ(file.read().capture.focus_areas.size(), 2U);
   for (const DecodedSize size : {DecodedSize{2848, 4288}, DecodedSize{4288, 2412}, DecodedSize{1000, 1000}}) {
     file.decoded = size;
@@ -73,7 +74,7 @@ TEST(ReadCapture, FocusAreasOfAPictureThatWasCroppedOrTurnedAreDropped) {
 
 TEST(ReadCapture, TheFirstPartOfAJpegHoldsItsCaptureData) {
   std::vector<std::byte> jpeg = full_file().jpeg();
-  jpeg.resize(jpeg.size() - 3);   // the scan data
+  jpeg.resize(jpeg.size() - 3);  // the scan data
   const CaptureReading reading = read_capture(jpeg, {4288, 2848});
   EXPECT_EQ(reading.capture.lens_serial.value().value, "L7");
   EXPECT_TRUE(reading.remarks.empty());
@@ -101,12 +102,13 @@ std::string box(const std::string& type, const std::string& content) {
 // ISO/IEC 14496-12 and 23008-12: a file type, and a meta box whose only item is Exif; its place is in iloc.
 std::string heif_with_exif() {
   const auto tiff = small_tiff();
-  const std::string exif = std::string(4, '\0') + std::string(tiff.begin(), tiff.end());   // offset to the TIFF header
+  const std::string exif = std::string(4, '\0') + std::string(tiff.begin(), tiff.end());  // offset to the TIFF header
   const std::string type = box("ftyp", std::string("heic\0\0\0\0mif1heic", 16));
   const auto meta_at = [&](std::size_t exif_at) {
-    const std::string entry = std::string("\x02\0\0\0\0\x01\0\0", 8) + "Exif" + std::string(1, '\0');   // item 1, no protection
+    const std::string entry =
+        std::string("\x02\0\0\0\0\x01\0\0", 8) + "Exif" + std::string(1, '\0');  // item 1, no protection
     const std::string items = box("iinf", std::string("\0\0\0\0\0\x01", 6) + box("infe", entry));
-    std::string place("\0\0\0\0\x44\0\0\x01\0\x01\0\0\0\x01", 14);   // 4-byte offsets and lengths; item 1, one extent
+    std::string place("\0\0\0\0\x44\0\0\x01\0\x01\0\0\0\x01", 14);  // 4-byte offsets and lengths; item 1, one extent
     append_big_endian(place, exif_at, 4);
     append_big_endian(place, exif.size(), 4);
     const std::string handler = box("hdlr", std::string(8, '\0') + "pict" + std::string(13, '\0'));
@@ -189,8 +191,12 @@ void damage(std::vector<std::byte>& file, std::mt19937& random) {
   const auto any = [&](std::size_t n) { return std::uniform_int_distribution<std::size_t>(0, n - 1)(random); };
   const std::size_t at = any(file.size());
   switch (any(5)) {
-    case 0: file[at] = static_cast<std::byte>(any(256)); break;
-    case 1: file[at] ^= static_cast<std::byte>(1U << any(8)); break;
+    case 0:
+      file[at] = static_cast<std::byte>(any(256));
+      break;
+    case 1:
+      file[at] ^= static_cast<std::byte>(1U << any(8));
+      break;
     case 2: {
       const std::byte extreme = any(2) == 0 ? std::byte{0xFF} : std::byte{0};
       for (std::size_t i = at; i < std::min(at + 1 + any(4), file.size()); ++i) file[i] = extreme;
@@ -198,11 +204,13 @@ void damage(std::vector<std::byte>& file, std::mt19937& random) {
     }
     case 3: {
       const std::size_t from = any(file.size()), count = std::min({any(64) + 1, file.size() - at, file.size() - from});
-      std::copy_n(std::vector(file.begin() + static_cast<long>(from), file.begin() + static_cast<long>(from + count)).begin(),
-                  count, file.begin() + static_cast<long>(at));
+      std::copy_n(
+          std::vector(file.begin() + static_cast<long>(from), file.begin() + static_cast<long>(from + count)).begin(),
+          count, file.begin() + static_cast<long>(at));
       break;
     }
-    default: file.resize(at + 1);
+    default:
+      file.resize(at + 1);
   }
 }
 
@@ -210,7 +218,8 @@ void damage(std::vector<std::byte>& file, std::mt19937& random) {
 void expect_sound(const CaptureReading& reading) {
   const Capture& c = reading.capture;
   const auto within = [](const OptionalSourced<double>& value, double least, double greatest) {
-    EXPECT_TRUE(!value || (value->value >= least && value->value <= greatest)) << value.value_or(Sourced<double>{}).value;
+    EXPECT_TRUE(!value || (value->value >= least && value->value <= greatest))
+        << value.value_or(Sourced<double>{}).value;
   };
   within(c.focal_length_mm, 0.5, 20000);
   within(c.f_number, 0.7, 1000);
@@ -234,7 +243,9 @@ void expect_sound(const CaptureReading& reading) {
 
 TEST(ReadCapture, DamagedFilesNeverThrowAndNeverGiveNonsense) {
   ExifFile canon;
-  canon.set("Exif.Image.Make", "Canon").set("Exif.Image.Model", "Canon EOS 1300D").set("Exif.Photo.FocalLength", "36/1");
+  canon.set("Exif.Image.Make", "Canon")
+      .set("Exif.Image.Model", "Canon EOS 1300D")
+      .set("Exif.Photo.FocalLength", "36/1");
   canon.set("Exif.Photo.FocalPlaneXResolution", "5184000/905").set("Exif.Photo.PixelXDimension", "5184");
   canon.set("Exif.Photo.PixelYDimension", "3456").set("Exif.CanonFi.FocusDistanceUpper", Exiv2::signedShort, "182");
   canon.set("Exif.CanonFi.FocusDistanceLower", Exiv2::signedShort, "113");

@@ -54,9 +54,12 @@ TEST(StandardExif, AbsurdValuesAreAbsentAndRemarked) {
     const char* key;
     const char* value;
   } cases[] = {
-      {"Exif.Photo.FNumber", "0/10"},          {"Exif.Photo.FNumber", "0/0"},
-      {"Exif.Photo.FocalLength", "0/1"},       {"Exif.Photo.FocalLength", "50/0"},
-      {"Exif.Photo.ExposureTime", "0/1"},      {"Exif.Photo.ExposureTime", "0/0"},
+      {"Exif.Photo.FNumber", "0/10"},
+      {"Exif.Photo.FNumber", "0/0"},
+      {"Exif.Photo.FocalLength", "0/1"},
+      {"Exif.Photo.FocalLength", "50/0"},
+      {"Exif.Photo.ExposureTime", "0/1"},
+      {"Exif.Photo.ExposureTime", "0/0"},
       {"Exif.Photo.SubjectDistance", "4294967294/1"},
       {"Exif.Photo.DateTimeOriginal", "1900:01:01 00:00:00"},
       {"Exif.Photo.DateTimeOriginal", "2026:13:41 27:00:00"},
@@ -121,7 +124,7 @@ TEST(StandardExif, TheTimeKeepsItsFractionAndZone) {
   EXPECT_EQ(iso_time("2026:06:20 14:03:07", "", ""), "2026-06-20T14:03:07");
   EXPECT_EQ(iso_time("2026:06:20 14:03:07", "050 ", "+02:00"), "2026-06-20T14:03:07.050+02:00");
   EXPECT_EQ(iso_time("2026:06:20 14:03:07", "x", "   :  "), "2026-06-20T14:03:07");
-  EXPECT_FALSE(iso_time("2026:02:29 14:03:07", "", ""));   // no leap year
+  EXPECT_FALSE(iso_time("2026:02:29 14:03:07", "", ""));  // no leap year
   const auto reading = plain_file()
                            .set("Exif.Photo.DateTimeOriginal", "    :  :     :  :  ")
                            .set("Exif.Photo.DateTimeDigitized", "2026:06:20 14:03:07")
@@ -153,15 +156,17 @@ TEST(StandardExif, SubjectAreasArePointsCirclesAndBoxesAboutTheirCentre) {
 TEST(StandardExif, TheBoxThatPhonesWriteByDefaultIsNoSubjectArea) {
   const auto areas = [](const char* make, const char* size_x, const char* size_y, const char* area) {
     ExifFile file;
-    file.set("Exif.Image.Make", make).set("Exif.Photo.PixelXDimension", size_x).set("Exif.Photo.PixelYDimension", size_y);
+    file.set("Exif.Image.Make", make)
+        .set("Exif.Photo.PixelXDimension", size_x)
+        .set("Exif.Photo.PixelYDimension", size_y);
     file.decoded = {std::stoi(size_x), std::stoi(size_y)};
     return file.set("Exif.Photo.SubjectArea", area).read().capture.focus_areas.size();
   };
-  EXPECT_EQ(areas("Apple", "4032", "3024", "2015 1511 2217 1330"), 0U);    // 55 % x 44 %
-  EXPECT_EQ(areas("other", "2448", "2448", "1223 1223 1795 1077"), 0U);    // the same of a square cut out of 3264 x 2448
-  EXPECT_EQ(areas("Apple", "3264", "2448", "1631 1223 881 881"), 0U);      // an older one
-  EXPECT_EQ(areas("Apple", "3264", "2448", "1000 1223 881 881"), 1U);      // somebody chose
-  EXPECT_EQ(areas("Camera", "3264", "2448", "1631 1223 881 881"), 1U);     // the middle point of a camera
+  EXPECT_EQ(areas("Apple", "4032", "3024", "2015 1511 2217 1330"), 0U);  // 55 % x 44 %
+  EXPECT_EQ(areas("other", "2448", "2448", "1223 1223 1795 1077"), 0U);  // the same of a square cut out of 3264 x 2448
+  EXPECT_EQ(areas("Apple", "3264", "2448", "1631 1223 881 881"), 0U);    // an older one
+  EXPECT_EQ(areas("Apple", "3264", "2448", "1000 1223 881 881"), 1U);    // somebody chose
+  EXPECT_EQ(areas("Camera", "3264", "2448", "1631 1223 881 881"), 1U);   // the middle point of a camera
 }
 
 TEST(StandardExif, TheSubjectAreaCountsInRecordedPixelsWhenThePictureWasReduced) {
@@ -169,6 +174,38 @@ TEST(StandardExif, TheSubjectAreaCountsInRecordedPixelsWhenThePictureWasReduced)
   file.decoded = {1500, 1000};
   ASSERT_EQ(file.read().capture.focus_areas.size(), 1U);
   EXPECT_DOUBLE_EQ(file.read().capture.focus_areas.front().box.x, 0.5);
+}
+
+TEST(StandardExif, MinusOneIsAnExposureBiasAndAllBitsSetNoBrightness) {
+  EXPECT_DOUBLE_EQ(
+      plain_file().set("Exif.Photo.ExposureBiasValue", "-1/1").read().capture.exposure_bias_ev.value().value, -1);
+  EXPECT_DOUBLE_EQ(
+      plain_file().set("Exif.Photo.BrightnessValue", "-205/100").read().capture.brightness_apex.value().value, -2.05);
+  const auto unknown = plain_file().set("Exif.Photo.BrightnessValue", "-1/1").read();  // FFFFFFFF.H, read as signed
+  EXPECT_FALSE(unknown.capture.brightness_apex);
+  EXPECT_TRUE(unknown.remarks.empty());
+}
+
+TEST(StandardExif, NamesAndNumbersThatStandForNoneAreNone) {
+  ExifFile file = plain_file();
+  file.set("Exif.Photo.LensModel", "----").set("Exif.Photo.LensSerialNumber", "0000000000");
+  file.set("Exif.Photo.BodySerialNumber", "0").set("Exif.Photo.LensSpecification", "0/0 0/0 0/0 0/0");
+  const Capture capture = file.read().capture;
+  EXPECT_FALSE(capture.lens || capture.lens_serial || capture.body_serial);
+  file.set("Exif.Photo.LensSpecification", "18/1 55/1 35/10 56/10");
+  EXPECT_EQ(file.read().capture.lens.value().value, "18-55 mm f/3.5-5.6");
+}
+
+TEST(StandardExif, TheModeOfExposureIsFoundInEitherTag) {
+  const auto mode = [](const char* key, const char* value) {
+    return plain_file().set(key, value).read().capture.exposure_mode;
+  };
+  EXPECT_EQ(mode("Exif.Photo.ExposureMode", "0").value().value, ExposureMode::automatic);
+  EXPECT_EQ(mode("Exif.Photo.ExposureMode", "1").value().value, ExposureMode::manual);
+  EXPECT_EQ(mode("Exif.Photo.ExposureMode", "2").value().value, ExposureMode::bracket);
+  EXPECT_EQ(mode("Exif.Photo.ExposureProgram", "1").value().value, ExposureMode::manual);
+  EXPECT_EQ(mode("Exif.Photo.ExposureProgram", "3").value().value, ExposureMode::automatic);
+  EXPECT_FALSE(mode("Exif.Photo.ExposureProgram", "0"));
 }
 
 TEST(StandardExif, TheMakeIsNotRepeatedAndCompanyWordsAreLeftAway) {

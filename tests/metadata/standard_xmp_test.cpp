@@ -17,14 +17,16 @@ std::string packet(const std::string& attributes, const std::string& properties 
          "<rdf:Description rdf:about=\"\" xmlns:aux=\"http://ns.adobe.com/exif/1.0/aux/\""
          " xmlns:exif=\"http://ns.adobe.com/exif/1.0/\" xmlns:exifEX=\"http://cipa.jp/exif/1.0/\""
          " xmlns:mwg-rs=\"http://www.metadataworkinggroup.com/schemas/regions/\""
-         " xmlns:stArea=\"http://ns.adobe.com/xmp/sType/Area#\" xmlns:stDim=\"http://ns.adobe.com/xap/1.0/sType/Dimensions#\""
-         " xmlns:Iptc4xmpExt=\"http://iptc.org/std/Iptc4xmpExt/2008-02-29/\" xmlns:xmp=\"http://ns.adobe.com/xap/1.0/\" " +
+         " xmlns:stArea=\"http://ns.adobe.com/xmp/sType/Area#\" "
+         "xmlns:stDim=\"http://ns.adobe.com/xap/1.0/sType/Dimensions#\""
+         " xmlns:Iptc4xmpExt=\"http://iptc.org/std/Iptc4xmpExt/2008-02-29/\" "
+         "xmlns:xmp=\"http://ns.adobe.com/xap/1.0/\" " +
          attributes + ">" + properties + "</rdf:Description></rdf:RDF></x:xmpmeta><?xpacket end=\"w\"?>";
 }
 
 struct Region {
   const char* type;
-  const char* area;   // attributes
+  const char* area;  // attributes
 };
 
 // Regions in the form of the Metadata Working Group, applied to a picture of 6000 x 4000 px unless said otherwise.
@@ -61,7 +63,9 @@ TEST(StandardXmp, RegionsAreGivenByTheirCentre) {
 
 TEST(StandardXmp, FocusComesBeforeFaceAndBothAfterTheCamerasOwnArea) {
   ExifFile file;
-  file.set("Exif.Image.Make", "FUJIFILM").set("Exif.Photo.PixelXDimension", "6000").set("Exif.Photo.PixelYDimension", "4000");
+  file.set("Exif.Image.Make", "FUJIFILM")
+      .set("Exif.Photo.PixelXDimension", "6000")
+      .set("Exif.Photo.PixelYDimension", "4000");
   file.set("Exif.Fujifilm.0x1023", Exiv2::unsignedShort, "1500 3000").set("Exif.Photo.SubjectArea", "600 400");
   file.xmp = mwg_packet({{"Face", "stArea:x=\"0.3\" stArea:y=\"0.3\" stArea:w=\"0.1\" stArea:h=\"0.1\""},
                          {"Pet", "stArea:x=\"0.5\" stArea:y=\"0.3\" stArea:w=\"0.1\" stArea:h=\"0.1\""},
@@ -74,13 +78,12 @@ TEST(StandardXmp, FocusComesBeforeFaceAndBothAfterTheCamerasOwnArea) {
 
 TEST(StandardXmp, RegionsOfATurnedPictureOrOutsideTheFrameAreNotUsed) {
   const Region face{"Face", "stArea:x=\"0.3\" stArea:y=\"0.3\" stArea:w=\"0.1\" stArea:h=\"0.1\""};
-  EXPECT_EQ(read_with(mwg_packet({face}, "3000", "2000")).capture.focus_areas.size(), 1U);   // reduced since
+  EXPECT_EQ(read_with(mwg_packet({face}, "3000", "2000")).capture.focus_areas.size(), 1U);  // reduced since
   const auto turned = read_with(mwg_packet({face}, "4000", "6000"));
   EXPECT_TRUE(turned.capture.focus_areas.empty());
   EXPECT_TRUE(has_remark(turned, kValueAbsurd));
-  EXPECT_TRUE(
-      read_with(mwg_packet({{"Face", "stArea:x=\"7\" stArea:y=\"0.3\" stArea:w=\"0.1\" stArea:h=\"0.1\""}}))
-          .capture.focus_areas.empty());
+  EXPECT_TRUE(read_with(mwg_packet({{"Face", "stArea:x=\"7\" stArea:y=\"0.3\" stArea:w=\"0.1\" stArea:h=\"0.1\""}}))
+                  .capture.focus_areas.empty());
 }
 
 TEST(StandardXmp, IptcRegionsOfPeopleAreFaces) {
@@ -109,9 +112,10 @@ TEST(StandardXmp, IptcRegionsOfPeopleAreFaces) {
 TEST(StandardXmp, ValuesFillWhatExifLeavesOpen) {
   ExifFile file;
   file.set("Exif.Photo.FNumber", "28/10");
-  file.xmp = packet("aux:Lens=\"400mm f/2.8\" aux:SerialNumber=\"B1\" aux:LensSerialNumber=\"L1\" exif:FNumber=\"40/10\""
-                    " exif:ExposureTime=\"1/500\" exif:FocalLength=\"400/1\" exif:DateTimeOriginal=\"2026-06-20T14:03:07.25+02:00\"",
-                    "<exif:ISOSpeedRatings><rdf:Seq><rdf:li>640</rdf:li></rdf:Seq></exif:ISOSpeedRatings>");
+  file.xmp = packet(
+      "aux:Lens=\"400mm f/2.8\" aux:SerialNumber=\"B1\" aux:LensSerialNumber=\"L1\" exif:FNumber=\"40/10\""
+      " exif:ExposureTime=\"1/500\" exif:FocalLength=\"400/1\" exif:DateTimeOriginal=\"2026-06-20T14:03:07.25+02:00\"",
+      "<exif:ISOSpeedRatings><rdf:Seq><rdf:li>640</rdf:li></rdf:Seq></exif:ISOSpeedRatings>");
   const Capture capture = file.read().capture;
   EXPECT_DOUBLE_EQ(capture.f_number.value().value, 2.8);
   EXPECT_EQ(capture.f_number.value().source, Source::exif);

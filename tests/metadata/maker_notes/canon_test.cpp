@@ -29,7 +29,7 @@ ExifFile with_distances(int upper, int lower) {
 }
 
 TEST(CanonNote, TheFocusDistanceIsAnIntervalWithTheValueInItsDioptricMiddle) {
-  const auto distance = with_distances(182, 113).read().capture.focus_distance;   // a real frame of an EOS 1300D
+  const auto distance = with_distances(182, 113).read().capture.focus_distance;  // a real frame of an EOS 1300D
   ASSERT_TRUE(distance);
   EXPECT_EQ(distance->source, Source::maker_note);
   EXPECT_DOUBLE_EQ(distance->value.low_m, 1.13);
@@ -46,7 +46,7 @@ TEST(CanonNote, TheTwoEndsAreSorted) {
 TEST(CanonNote, TwoEqualEndsGiveThatDistance) {
   const auto distance = with_distances(182, 182).read().capture.focus_distance;
   ASSERT_TRUE(distance);
-  EXPECT_EQ(distance->value.value_m, 1.82);   // exactly: 2/(1/1.82 + 1/1.82) is one unit in the last place above
+  EXPECT_EQ(distance->value.value_m, 1.82);  // exactly: 2/(1/1.82 + 1/1.82) is one unit in the last place above
 }
 
 TEST(CanonNote, DistancesAbove327MetresAreNotNegative) {
@@ -63,7 +63,7 @@ TEST(CanonNote, TheSpecialDistancesAreInfinityAndUnknown) {
   EXPECT_DOUBLE_EQ(infinite->value.low_m, 81.91);
   const auto half_open = with_distances(65535, 1000).read().capture.focus_distance;
   ASSERT_TRUE(half_open);
-  EXPECT_DOUBLE_EQ(half_open->value.value_m, 20);   // twice the near end: the middle in 1/distance
+  EXPECT_DOUBLE_EQ(half_open->value.value_m, 20);  // twice the near end: the middle in 1/distance
   EXPECT_TRUE(std::isinf(half_open->value.high_m));
   EXPECT_FALSE(with_distances(0, 0).read().capture.focus_distance);
 }
@@ -72,7 +72,7 @@ TEST(CanonNote, ManualFocusMakesTheDistanceDoubtful) {
   ExifFile file = with_distances(182, 113);
   EXPECT_FALSE(file.read().capture.focus_distance.value().value.stale);
   file.set("Exif.CanonCs.FocusMode", "3");
-  file.set("Exif.CanonCs.0x0000", Exiv2::unsignedShort, "16");   // 8 words
+  file.set("Exif.CanonCs.0x0000", Exiv2::unsignedShort, "16");  // 8 words
   const Capture capture = file.read().capture;
   EXPECT_EQ(capture.focus_mode.value().value, FocusMode::manual);
   EXPECT_TRUE(capture.focus_distance.value().value.stale);
@@ -80,7 +80,7 @@ TEST(CanonNote, ManualFocusMakesTheDistanceDoubtful) {
 
 TEST(CanonNote, CloseUpTheUnknownOriginWidensTheInterval) {
   ExifFile file = with_distances(32, 30);
-  file.exif["Exif.Photo.FocalLength"] = "100/1";   // 0.3 m is three focal lengths
+  file.exif["Exif.Photo.FocalLength"] = "100/1";  // 0.3 m is three focal lengths
   const auto distance = file.read().capture.focus_distance;
   ASSERT_TRUE(distance);
   EXPECT_NEAR(distance->value.low_m, 0.20, 1e-12);
@@ -102,7 +102,7 @@ TEST(CanonNote, ANoteThatAnEditorMovedIsNotBelieved) {
 
 ExifFile with_subject_distance(const char* model, const char* number) {
   ExifFile file = canon_file(model);
-  file.set("Exif.CanonSi.0x0000", Exiv2::unsignedShort, "40");   // 20 words, tags 0 to 0x13
+  file.set("Exif.CanonSi.0x0000", Exiv2::unsignedShort, "40");  // 20 words, tags 0 to 0x13
   file.set("Exif.CanonSi.SubjectDistance", Exiv2::unsignedShort, number);
   return file;
 }
@@ -133,8 +133,7 @@ const char* kNinePoints =
     "0 64697 839 64142 0 1394 64697 839 0 743 393 393 0 0 0 65143 65143 64793 16 16 0 65535";
 
 TEST(CanonNote, ThePointInFocusIsTheFocusArea) {
-  const Capture capture =
-      canon_file().set("Exif.Canon.AFInfo", Exiv2::unsignedShort, kNinePoints).read().capture;
+  const Capture capture = canon_file().set("Exif.Canon.AFInfo", Exiv2::unsignedShort, kNinePoints).read().capture;
   ASSERT_EQ(capture.focus_areas.size(), 1U);
   EXPECT_EQ(capture.focus_areas.front().kind, FocusAreaKind::focus_area);
   const FractionRect box = capture.focus_areas.front().box;
@@ -237,16 +236,17 @@ TEST(CanonNote, ASmallerPictureByTheCamerasOwnSettingHasLargerPixels) {
 
 TEST(CanonNote, StabiliserSerialLensAndSpeedAreRead) {
   ExifFile file = canon_file();
-  file.set("Exif.CanonCs.0x0000", Exiv2::unsignedShort, "70").set("Exif.CanonCs.ImageStabilization", Exiv2::unsignedShort, "256");
+  file.set("Exif.CanonCs.0x0000", Exiv2::unsignedShort, "70")
+      .set("Exif.CanonCs.ImageStabilization", Exiv2::unsignedShort, "256");
   file.set("Exif.Canon.SerialNumber", Exiv2::unsignedLong, "330100138");
   file.set("Exif.Canon.LensModel", Exiv2::asciiString, "EF400mm f/2.8L");
   file.set("Exif.CanonSi.0x0000", Exiv2::unsignedShort, "6").set("Exif.CanonSi.ISOSpeed", "143");
   file.set("Exif.CanonSi.AutoISO", "35");
   const Capture capture = file.read().capture;
   EXPECT_FALSE(capture.stabiliser_on.value().value);
-  EXPECT_EQ(capture.body_serial.value().value, "0330100138");   // as engraved, ten digits
+  EXPECT_EQ(capture.body_serial.value().value, "0330100138");  // as engraved, ten digits
   EXPECT_EQ(capture.lens.value().value, "EF400mm f/2.8L");
-  EXPECT_NEAR(capture.iso_speed.value().value, 148, 0.5);        // ExifTool's reading of the frame these numbers come from
+  EXPECT_NEAR(capture.iso_speed.value().value, 148, 0.5);  // ExifTool's reading of the frame these numbers come from
   file.set("Exif.CanonCs.ImageStabilization", Exiv2::unsignedShort, "259");
   EXPECT_TRUE(file.read().capture.stabiliser_on.value().value);
   file.set("Exif.CanonCs.ImageStabilization", Exiv2::unsignedShort, "65535");
@@ -259,7 +259,7 @@ TEST(CanonNote, LongExposuresOfTheFirstRawFilesKeepTheirSign) {
   file.set("Exif.Photo.ExposureTime", "1/1").set("Exif.CanonSi.0x0000", Exiv2::unsignedShort, "46");
   file.set("Exif.CanonSi.ShutterSpeedValue", Exiv2::unsignedShort, "65460");
   EXPECT_NEAR(file.read().capture.exposure_time_s.value().value, 5.0397, 1e-4);
-  file.set("Exif.Photo.ExifVersion", "48 50 51 48");   // a file with Exif of its own
+  file.set("Exif.Photo.ExifVersion", "48 50 51 48");  // a file with Exif of its own
   EXPECT_DOUBLE_EQ(file.read().capture.exposure_time_s.value().value, 1);
 }
 

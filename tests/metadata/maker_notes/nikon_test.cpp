@@ -27,7 +27,7 @@ ExifFile with_distance(int code) {
 }
 
 TEST(NikonNote, TheFocusDistanceComesInStepsOfSixPercent) {
-  const auto distance = with_distance(68).read().capture.focus_distance;   // a real frame of a D90: 0.50 m
+  const auto distance = with_distance(68).read().capture.focus_distance;  // a real frame of a D90: 0.50 m
   ASSERT_TRUE(distance);
   EXPECT_NEAR(distance->value.value_m, 0.5012, 0.0001);
   // The interval reaches half way to the neighbouring steps.
@@ -87,7 +87,7 @@ TEST(NikonNote, LensesOfTheNewMountGiveFinerSteps) {
   const auto infinite = with_fine_distance(0, 128, 80).read().capture.focus_distance;
   ASSERT_TRUE(infinite);
   EXPECT_TRUE(std::isinf(infinite->value.value_m));
-  EXPECT_FALSE(with_fine_distance(4, 128, 80, 0).read().capture.focus_distance);   // adapted lens
+  EXPECT_FALSE(with_fine_distance(4, 128, 80, 0).read().capture.focus_distance);  // adapted lens
 }
 
 // The AF structure byte by byte: version, kind of detection, then the sizes at the offset of the version.
@@ -95,7 +95,7 @@ std::vector<std::uint8_t> af_structure(const char* version, int detection, std::
   std::vector<std::uint8_t> bytes(size, 0);
   for (std::size_t i = 0; i < 4; ++i) bytes[i] = static_cast<std::uint8_t>(version[i]);
   bytes[4] = static_cast<std::uint8_t>(detection);
-  const int values[] = {4000, 3000, 1000, 600, 400, 300};   // W, H, centre x, centre y, w, h
+  const int values[] = {4000, 3000, 1000, 600, 400, 300};  // W, H, centre x, centre y, w, h
   for (std::size_t i = 0; i < 6; ++i) {
     bytes[offset + 2 * i] = static_cast<std::uint8_t>(values[i] & 0xFF);
     bytes[offset + 2 * i + 1] = static_cast<std::uint8_t>(values[i] >> 8);
@@ -111,8 +111,8 @@ TEST(NikonNote, TheAreaOfContrastDetectionIsFoundInEveryVersion) {
     std::size_t size;
     bool expected;
   } cases[] = {
-      {"0100", 1, 0x10, 0x1e, true},  {"0100", 0, 0x10, 0x1e, false}, {"0101", 1, 0x46, 0x54, true},
-      {"0300", 2, 0x2a, 0x54, true},  {"0300", 1, 0x2a, 0x54, false}, {"0301", 1, 0x2a, 0x54, true},
+      {"0100", 1, 0x10, 0x1e, true}, {"0100", 0, 0x10, 0x1e, false}, {"0101", 1, 0x46, 0x54, true},
+      {"0300", 2, 0x2a, 0x54, true}, {"0300", 1, 0x2a, 0x54, false}, {"0301", 1, 0x2a, 0x54, true},
       {"0400", 0, 0x3e, 0x54, true},
   };
   for (const auto& c : cases) {
@@ -147,7 +147,7 @@ TEST(NikonNote, FocusModeStabiliserCounterAndLensAreRead) {
   file.set("Exif.NikonVr.VibrationReduction", "1").set("Exif.Nikon3.Focus", "AF-A  ");
   capture = file.read().capture;
   EXPECT_TRUE(capture.stabiliser_on.value().value);
-  EXPECT_FALSE(capture.focus_mode);   // the body chose, and does not say what
+  EXPECT_FALSE(capture.focus_mode);  // the body chose, and does not say what
 }
 
 }  // namespace

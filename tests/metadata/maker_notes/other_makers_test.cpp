@@ -136,8 +136,8 @@ TEST(SonyNote, TheFlexibleSpotCountsOnlyWhereTheCameraFocusedWithIt) {
   };
   ASSERT_EQ(areas("3", "2").size(), 1U);
   EXPECT_DOUBLE_EQ(areas("3", "2").front().box.x, 0.25);
-  EXPECT_TRUE(areas("3", "0").empty());   // by hand
-  EXPECT_TRUE(areas("0", "2").empty());   // another area mode
+  EXPECT_TRUE(areas("3", "0").empty());  // by hand
+  EXPECT_TRUE(areas("0", "2").empty());  // another area mode
 }
 
 TEST(SonyNote, CompactsDoNotMeanTheFocusModeTheyWrite) {
@@ -168,7 +168,7 @@ ExifFile with_focus_position(const char* model, int position) {
 TEST(SonyNote, TheFocusPositionIsADistanceOfRoughTrustOnTheEMount) {
   const auto distance = with_focus_position("ILCE-6300", 128).read().capture.focus_distance;
   ASSERT_TRUE(distance);
-  EXPECT_NEAR(distance->value.value_m, (8 + 1) * 0.030, 1e-9);   // 2^(128/16 - 5) = 8
+  EXPECT_NEAR(distance->value.value_m, (8 + 1) * 0.030, 1e-9);  // 2^(128/16 - 5) = 8
   const auto infinite = with_focus_position("ILCE-6300", 255).read().capture.focus_distance;
   ASSERT_TRUE(infinite);
   EXPECT_TRUE(std::isinf(infinite->value.value_m));
@@ -201,7 +201,7 @@ TEST(FujifilmNote, TheFocusPixelIsAPointInRecordedPixels) {
 
 TEST(FujifilmNote, ModeStabiliserSequenceAndSerialAreRead) {
   ExifFile file = file_of("FUJIFILM", "X-T2");
-  file.set("Exif.Fujifilm.0x102d", Exiv2::unsignedLong, "274").set("Exif.Fujifilm.FocusMode", "1");   // 0x112
+  file.set("Exif.Fujifilm.0x102d", Exiv2::unsignedLong, "274").set("Exif.Fujifilm.FocusMode", "1");  // 0x112
   file.set("Exif.Fujifilm.0x1422", Exiv2::unsignedShort, "2 0 0");
   file.set("Exif.Fujifilm.SequenceNumber", "3").set("Exif.Fujifilm.SerialNumber", "FC  A3115393  ");
   const Capture capture = file.read().capture;
