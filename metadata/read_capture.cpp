@@ -90,6 +90,18 @@ void merge_focus_distance(const MakerNote& note, Capture& capture, Remarks& rema
   fill(capture.focus_distance, usable(note.rough_focus_distance), Source::maker_note);
 }
 
+// No name or number of a camera is longer; a text of the size of a file would be carried through every record.
+void shorten(OptionalSourced<std::string>& text) {
+  constexpr std::size_t kMostBytes = 200;
+  if (text && text->value.size() > kMostBytes) text->value.resize(kMostBytes);
+}
+
+void shorten_texts(Capture& capture) {
+  for (auto* text : {&capture.camera, &capture.lens, &capture.body_serial, &capture.lens_serial, &capture.software}) {
+    shorten(*text);
+  }
+}
+
 // Lenses and bodies without a number write zeros; two of these are not the same thing.
 void drop_serial_of_zeros(OptionalSourced<std::string>& serial) {
   if (serial && serial->value.find_first_not_of("0 .-") == std::string::npos) serial.reset();
@@ -171,6 +183,7 @@ void interpret(const ParsedFile& parsed, DecodedSize decoded, CaptureReading& re
 
   drop_serial_of_zeros(capture.body_serial);
   drop_serial_of_zeros(capture.lens_serial);
+  shorten_texts(capture);
   drop_misplaced_areas(recorded_size(tags).value_or(DecodedSize{}), decoded, reading);
   std::ranges::stable_sort(capture.focus_areas, {}, &FocusArea::kind);
   if (capture.focus_distance && capture.focal_length_mm) {

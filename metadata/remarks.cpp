@@ -12,7 +12,10 @@ std::optional<double> plausible(double value, const Plausible& limits, Remarks& 
   return std::nullopt;
 }
 
-void remark_absurd(const char* name, const std::string& seen, const std::string& expected, Remarks& remarks) {
+void remark_absurd(const char* name, const std::string& seen_text, const std::string& expected, Remarks& remarks) {
+  // Damaged files hold texts of any length; the start tells what they are.
+  constexpr std::size_t kMostShown = 60;
+  const std::string seen = seen_text.size() <= kMostShown ? seen_text : seen_text.substr(0, kMostShown) + "...";
   remarks.push_back({kValueAbsurd, fmt::format("The file gives {} as {}; expected {}. It is taken as not known.", name,
                                                seen, expected)});
 }

@@ -60,6 +60,15 @@ TEST(ReadCapture, TheFullFileHoldsWhatTheFollowingTestsDamage) {
   EXPECT_EQ(c.focus_areas.size(), 2U);
 }
 
+TEST(ReadCapture, TextsOfAnyLengthAreShortened) {
+  ExifFile file = full_file();
+  file.set("Exif.Image.Model", std::string(30000, 'x')).set("Exif.Photo.DateTimeOriginal", std::string(20000, '9'));
+  const CaptureReading reading = file.read();
+  EXPECT_LE(reading.capture.camera.value().value.size(), 200U);
+  ASSERT_EQ(reading.remarks.size(), 1U);
+  EXPECT_LT(reading.remarks.front().message.size(), 300U);
+}
+
 TEST(ReadCapture, FocusAreasOfAPictureThatWasCroppedOrTurnedAreDropped) {
   ExifFile file = full_file();
   file.decoded = {2144, 1424};  // reduced
