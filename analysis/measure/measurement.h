@@ -93,6 +93,26 @@ struct Tone {
   double p99_linear = 0;
 };
 
+// Mean light on a grid of square tiles, row by row: small enough to keep, fine enough to register one frame on another
+// and to compare the same surfaces in both. Only whole tiles; what is left over at the right and the bottom is dropped.
+struct LevelGrid {
+  int rows = 0;
+  int columns = 0;
+  int tile_px = 0;                   // side of a tile
+  std::vector<float> mean_linear;    // 1.0 = clipping level
+  std::vector<float> contrast;       // standard deviation / mean inside the tile, linear; 0 where the mean is 0
+  std::vector<float> clipped;        // fraction of its pixels with any channel clipped
+};
+
+// How much of the picture lies above a level, by the largest of the three channels of each pixel.
+// share_above[k] belongs to the level 2^-(k / 8): k = 0 is the clipping level itself, the last four stops below.
+struct Highlights {
+  std::vector<float> frame_share_above;   // kHighlightSteps entries, never decreasing, fractions 0..1
+  std::vector<float> aim_share_above;     // the same inside the aim; empty without one
+};
+inline constexpr int kHighlightSteps = 33;
+inline constexpr double kHighlightStepsPerStop = 8;
+
 // Blur and clipping on a regular grid, row by row.
 struct TileMap {
   int rows = 0;
@@ -125,6 +145,8 @@ struct Measurement {
   std::optional<PlaneReading> plane;
   std::optional<Clipping> clipping;
   std::optional<Tone> tone;
+  std::optional<LevelGrid> levels;
+  std::optional<Highlights> highlights;
   std::optional<TileMap> tiles;
   double noise_codes = 0;            // standard deviation of the noise, 8-bit codes
 };

@@ -144,6 +144,8 @@ void FrameWorker::State::measure(const Resolved& resolved, FrameRecord& record) 
   Measurement measurement = measurer.measure(sink.luma(), request);
   measurement.clipping = sink.clipping();
   measurement.tone = sink.tone();
+  measurement.levels = sink.levels();
+  measurement.highlights = sink.highlights();
   if (measurement.tiles) measurement.tiles->clipped = sink.clipped_tiles(measurement.tiles->tile_px);
   record.measurement = std::move(measurement);
 }

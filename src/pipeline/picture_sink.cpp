@@ -4,6 +4,8 @@
 #include <cstdint>
 #include <opencv2/imgproc.hpp>
 
+#include "analysis/measure/level_grid.h"
+
 namespace focusfall {
 namespace {
 
@@ -42,6 +44,19 @@ void PictureSink::start(const PictureFormat& format) {
   const PixelRect aim = whole_pixels(aim_, format.width_px, format.height_px);
   clipping_.start(format.width_px, format.height_px, aim);
   tone_.start(code_count, aim);
+  highlights_.start(format.width_px, format.height_px, aim, code_count);
+}
+
+LevelGrid PictureSink::levels() const {
+  LevelGrid grid = level_grid(luma_);
+  // Clipping is counted in cut tiles at the right and the bottom too; the grid holds whole ones only.
+  const std::vector<float> clipped = clipping_.clipped_tiles(grid.tile_px);
+  const int clipped_columns = (luma_.codes.cols + grid.tile_px - 1) / grid.tile_px;
+  for (int row = 0; row < grid.rows; ++row) {
+    const auto first = clipped.begin() + static_cast<std::ptrdiff_t>(row) * clipped_columns;
+    grid.clipped.insert(grid.clipped.end(), first, first + grid.columns);
+  }
+  return grid;
 }
 
 cv::Mat PictureSink::luma_destination(int padded_width, int padded_height) {
@@ -54,6 +69,7 @@ void PictureSink::take(const YccStrip& strip) {
   cv::Mat kept = luma_.codes.rowRange(strip.first_row, strip.first_row + strip.y.rows);
   if (kept.data != strip.y.data) strip.y.copyTo(kept);
   clipping_.take(strip);
+  highlights_.take(strip);
   tone_.take(strip.first_row, strip.y);
 }
 
@@ -65,6 +81,7 @@ void PictureSink::take(const RgbStrip& strip) {
     cv::cvtColor(strip.rgb, kept, cv::COLOR_RGB2GRAY);   // .299 .587 .114, rounded, 8 and 16 bits
   }
   clipping_.take(strip);
+  highlights_.take(strip);
   tone_.take(strip.first_row, kept);
 }
 

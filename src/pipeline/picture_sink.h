@@ -7,6 +7,7 @@
 
 #include "analysis/conventions.h"
 #include "analysis/measure/clipping.h"
+#include "analysis/measure/highlights.h"
 #include "analysis/measure/luma_picture.h"
 #include "analysis/measure/tone.h"
 #include "src/decode/decoder.h"
@@ -30,6 +31,8 @@ class PictureSink final : public StripSink {
   Clipping clipping() const { return clipping_.clipping(); }
   std::vector<float> clipped_tiles(int tile_px) const { return clipping_.clipped_tiles(tile_px); }
   std::optional<Tone> tone() const { return tone_.tone(luma_.linear_of_code); }
+  std::optional<Highlights> highlights() const { return highlights_.highlights(luma_.linear_of_code); }
+  LevelGrid levels() const;   // with the clipped fraction of each tile
 
  private:
   cv::Mat plane(int width, int height, int type);
@@ -40,6 +43,7 @@ class PictureSink final : public StripSink {
   bool curve_is_srgb_ = false;        // the curve kept from the last picture
   ClippingAccumulator clipping_;
   ToneAccumulator tone_;
+  HighlightAccumulator highlights_;
   PictureFormat format_;
 };
 

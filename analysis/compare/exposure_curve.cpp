@@ -1,0 +1,251 @@
+#include "analysis/compare/exposure_curve.h"
+
+#include <Eigen/Dense>
+#include <algorithm>
+#include <array>
+#include <cmath>
+#include <numeric>
+
+namespace focusfall {
+namespace {
+
+// Bins of the curve, stops below clipping: half a stop at the shoulder, whole stops in the middle. Levels below eight
+// stops are not used (exposure_register.cpp).
+constexpr std::array kEdges = {0.0, -0.5, -1.0, -1.5, -2.0, -3.0, -4.0, -5.0, -6.0, -8.0};
+constexpr std::size_t kBins = kEdges.size() - 1;
+
+constexpr int kLeastTilesInCommon = 6;       // judgement: for a level with an error from their scatter
+// Tiles and frames that the curve is found from: what is beyond adds nothing but time.
+constexpr std::size_t kCurveTiles = 80, kCurveFrames = 60;
+constexpr double kSmoothness = 0.02;         // of neighbouring slopes, stops: judgement
+constexpr double kHuber = 2;                 // standard deviations, then less weight
+// A bent curve is taken where it lowers the scatter of the tiles by this much and departs from the straight one by this
+// many stops somewhere. Judgement.
+constexpr double kBentScatter = 0.8, kBentEv = 0.05;
+
+using Tiles = std::vector<std::vector<std::optional<TileLevel>>>;
+
+double median(std::vector<double> values) {
+  const auto middle = values.begin() + static_cast<std::ptrdiff_t>(values.size() / 2);
+  std::nth_element(values.begin(), middle, values.end());
+  return *middle;
+}
+
+double huber_weight(double residual, double sigma) {
+  const double z = std::abs(residual) / sigma;
+  return z <= kHuber ? 1 : kHuber / z;
+}
+
+// Alternating fit of tiles and frames with robust weights; the curve is given.
+struct TwoWay {
+  std::vector<double> tile, frame;
+  double residual_ev = 0;
+};
+
+TwoWay fit_two_way(const Tiles& tiles, const ToneShape& shape) {
+  const std::size_t n = tiles.size(), p = tiles.front().size();
+  TwoWay fit{std::vector<double>(p, 0), std::vector<double>(n, 0), 0};
+  double scale = 0.1;   // of the residual, in units of its own sigma at first
+  constexpr int kRounds = 40;
+  for (int round = 0; round < kRounds; ++round) {
+    double change = 0;
+    std::vector<double> residuals;
+    const auto pass = [&](std::size_t outer, std::size_t inner, auto at, std::vector<double>& out,
+                          const std::vector<double>& other) {
+      for (std::size_t a = 0; a < outer; ++a) {
+        double sum = 0, weights = 0;
+        for (std::size_t b = 0; b < inner; ++b) {
+          const auto& value = at(a, b);
+          if (!value) continue;
+          const double sigma = value->sigma_ev * shape.slope(value->level_ev);
+          const double target = shape.exposure_ev(value->level_ev) - other[b];
+          const double weight = huber_weight(target - out[a], std::hypot(sigma, scale)) / (sigma * sigma);
+          sum += weight * target, weights += weight;
+          residuals.push_back(target - out[a]);
+        }
+        if (weights == 0) continue;
+        change = std::max(change, std::abs(sum / weights - out[a]));
+        out[a] = sum / weights;
+      }
+    };
+    pass(p, n, [&](std::size_t a, std::size_t b) -> const auto& { return tiles[b][a]; }, fit.tile, fit.frame);
+    residuals.clear();
+    pass(n, p, [&](std::size_t a, std::size_t b) -> const auto& { return tiles[a][b]; }, fit.frame, fit.tile);
+    if (residuals.empty()) return fit;
+    for (double& r : residuals) r = std::abs(r);
+    fit.residual_ev = 1.4826 * median(std::move(residuals));
+    scale = std::clamp(fit.residual_ev, 0.003, 0.5);
+    if (round > 3 && change < 1e-5) break;
+  }
+  return fit;
+}
+
+// Evenly spread choice of at most `most` of the indices 0 ... count - 1, in the order of `key`.
+std::vector<std::size_t> spread_choice(const std::vector<double>& key, const std::vector<bool>& allowed, std::size_t most) {
+  std::vector<std::size_t> order;
+  for (std::size_t i = 0; i < key.size(); ++i) {
+    if (allowed[i]) order.push_back(i);
+  }
+  std::ranges::sort(order, [&](std::size_t a, std::size_t b) { return key[a] != key[b] ? key[a] < key[b] : a < b; });
+  if (order.size() <= most) return order;
+  std::vector<std::size_t> chosen;
+  for (std::size_t k = 0; k < most; ++k) chosen.push_back(order[k * (order.size() - 1) / (most - 1)]);
+  return chosen;
+}
+
+// Slopes of the bins from tiles and frames alone: least squares over slopes, tiles and frames together, mean slope 1.
+std::optional<ToneShape> fitted_shape(const Tiles& tiles, const TwoWay& start) {
+  const std::size_t all_frames = tiles.size(), all_tiles = tiles.front().size();
+  std::vector<bool> tile_seen(all_tiles), frame_seen(all_frames, true);
+  for (std::size_t p = 0; p < all_tiles; ++p) {
+    const auto seen = std::ranges::count_if(tiles, [p](const auto& frame) { return frame[p].has_value(); });
+    tile_seen[p] = seen >= 2;
+  }
+  const auto some_tiles = spread_choice(start.tile, tile_seen, kCurveTiles);
+  const auto some_frames = spread_choice(start.frame, frame_seen, kCurveFrames);
+  if (some_tiles.size() < static_cast<std::size_t>(kLeastTilesInCommon) || some_frames.size() < 2) return std::nullopt;
+
+  const auto size = static_cast<Eigen::Index>(kBins + some_tiles.size() + some_frames.size());
+  Eigen::VectorXd solution = Eigen::VectorXd::Zero(size);
+  solution.head(kBins).setOnes();
+  std::array<double, kBins> used{};   // how much of the data lies in each bin
+  constexpr int kRounds = 4;
+  for (int round = 0; round < kRounds; ++round) {
+    Eigen::MatrixXd normal = Eigen::MatrixXd::Zero(size, size);
+    used.fill(0);
+    for (std::size_t f = 0; f < some_frames.size(); ++f) {
+      for (std::size_t t = 0; t < some_tiles.size(); ++t) {
+        const auto& value = tiles[some_frames[f]][some_tiles[t]];
+        if (!value) continue;
+        const std::vector<double> lengths = ToneShape::lengths(value->level_ev);
+        const auto tile_at = static_cast<Eigen::Index>(kBins + t);
+        const auto frame_at = static_cast<Eigen::Index>(kBins + some_tiles.size() + f);
+        double residual = -solution[tile_at] - solution[frame_at];
+        for (std::size_t k = 0; k < kBins; ++k) residual -= solution[static_cast<Eigen::Index>(k)] * lengths[k];
+        const double sigma = std::hypot(value->sigma_ev, 0.01);
+        double weight = 1 / (sigma * sigma);
+        if (round > 0) weight *= huber_weight(residual, 2 * sigma);
+        // Row of the design: -lengths for the slopes, -1 for the tile, -1 for the frame; the target is 0.
+        std::size_t reach = 0;
+        for (std::size_t k = 0; k < kBins && lengths[k] > 0; ++k) reach = k + 1;
+        for (std::size_t a = 0; a < reach; ++a) {
+          for (std::size_t b = 0; b < reach; ++b) {
+            normal(static_cast<Eigen::Index>(a), static_cast<Eigen::Index>(b)) += weight * lengths[a] * lengths[b];
+          }
+          normal(static_cast<Eigen::Index>(a), tile_at) += weight * lengths[a];
+          normal(static_cast<Eigen::Index>(a), frame_at) += weight * lengths[a];
+        }
+        normal(tile_at, tile_at) += weight;
+        normal(frame_at, frame_at) += weight;
+        normal(tile_at, frame_at) += weight;
+        used[reach - 1] += 1;
+      }
+    }
+    for (Eigen::Index a = 0; a < size; ++a) {
+      for (Eigen::Index b = 0; b < a; ++b) normal(a, b) = normal(b, a);
+    }
+    // Neighbouring slopes alike; mean slope 1 over the data; one constant shared by tiles and frames taken out.
+    const double strong = 1e6 * std::max(1.0, normal.diagonal().mean());
+    const double rows = std::accumulate(used.begin(), used.end(), 0.0);
+    const double smooth = rows / static_cast<double>(kBins) * kSmoothness;
+    for (Eigen::Index k = 0; k + 1 < static_cast<Eigen::Index>(kBins); ++k) {
+      normal(k, k) += smooth, normal(k + 1, k + 1) += smooth;
+      normal(k, k + 1) -= smooth, normal(k + 1, k) -= smooth;
+    }
+    Eigen::VectorXd right = Eigen::VectorXd::Zero(size), gauge = Eigen::VectorXd::Zero(size);
+    for (std::size_t k = 0; k < kBins; ++k) gauge[static_cast<Eigen::Index>(k)] = used[k] / rows;
+    normal += strong * gauge * gauge.transpose();
+    right += strong * gauge;
+    for (std::size_t f = 0; f < some_frames.size(); ++f) {
+      const auto at = static_cast<Eigen::Index>(kBins + some_tiles.size() + f);
+      normal(at, at) += 1e-3;
+    }
+    normal.diagonal().array() += 1e-9 * strong * 1e-6;
+    solution = normal.ldlt().solve(right);
+    if (!solution.allFinite()) return std::nullopt;
+  }
+  std::vector<double> slopes;
+  for (std::size_t k = 0; k < kBins; ++k) slopes.push_back(solution[static_cast<Eigen::Index>(k)]);
+  // A curve that would fall, or be all but flat, is no tone curve.
+  if (std::ranges::any_of(slopes, [](double s) { return s < 0.05; })) return std::nullopt;
+  return ToneShape(slopes);
+}
+
+// Largest departure of the shape from a straight line over the levels in use, its constant taken off.
+double bend_ev(const Tiles& tiles, const ToneShape& shape) {
+  double least = 1e9, most = -1e9;
+  for (const auto& frame : tiles) {
+    for (const auto& value : frame) {
+      if (!value) continue;
+      const double difference = shape.exposure_ev(value->level_ev) - value->level_ev;
+      least = std::min(least, difference), most = std::max(most, difference);
+    }
+  }
+  return 0.5 * (most - least);
+}
+
+}  // namespace
+
+ToneShape::ToneShape() : slopes_(kBins, 1) {}
+ToneShape::ToneShape(std::vector<double> slopes) : slopes_(std::move(slopes)), identity_(false) {}
+
+std::size_t ToneShape::bin_count() { return kBins; }
+
+std::vector<double> ToneShape::lengths(double level_ev) {
+  std::vector<double> lengths(kBins, 0);
+  for (std::size_t k = 0; k < kBins && level_ev < kEdges[k]; ++k) {
+    const double bottom = k + 1 == kBins ? level_ev : std::max(level_ev, kEdges[k + 1]);
+    lengths[k] = kEdges[k] - bottom;
+  }
+  return lengths;
+}
+
+double ToneShape::exposure_ev(double level_ev) const {
+  if (identity_) return level_ev;
+  const auto by_bin = lengths(level_ev);
+  return -std::inner_product(by_bin.begin(), by_bin.end(), slopes_.begin(), 0.0);
+}
+
+double ToneShape::slope(double level_ev) const {
+  std::size_t bin = 0;
+  while (bin + 1 < kBins && level_ev < kEdges[bin + 1]) ++bin;
+  return slopes_[bin];
+}
+
+RelativeLevels relative_levels(const Tiles& tiles) {
+  RelativeLevels result;
+  result.frames.resize(tiles.size());
+  if (tiles.size() < 2) return result;
+  TwoWay fit = fit_two_way(tiles, result.shape);
+  if (const auto bent = fitted_shape(tiles, fit)) {
+    const TwoWay with_bend = fit_two_way(tiles, *bent);
+    if (with_bend.residual_ev < kBentScatter * fit.residual_ev && bend_ev(tiles, *bent) > kBentEv) {
+      fit = with_bend;
+      result.shape = *bent;
+    }
+  }
+  result.residual_ev = fit.residual_ev;
+
+  double sum = 0;
+  int count = 0;
+  for (std::size_t i = 0; i < tiles.size(); ++i) {
+    std::vector<double> residuals;
+    for (std::size_t p = 0; p < tiles[i].size(); ++p) {
+      if (!tiles[i][p]) continue;
+      residuals.push_back(std::abs(result.shape.exposure_ev(tiles[i][p]->level_ev) - fit.tile[p] - fit.frame[i]));
+    }
+    if (static_cast<int>(residuals.size()) < kLeastTilesInCommon) continue;
+    const int used = static_cast<int>(residuals.size());
+    const double scatter = 1.4826 * median(std::move(residuals));
+    // Tiles of one frame share errors (the curve, the displacement): no more than a dozen count as independent.
+    result.frames[i] = {fit.frame[i], std::max(0.002, scatter / std::sqrt(std::min(used, 12))), used};
+    sum += fit.frame[i];
+    ++count;
+  }
+  for (auto& frame : result.frames) {
+    if (frame) frame->level_ev -= sum / count;
+  }
+  return result;
+}
+
+}  // namespace focusfall
