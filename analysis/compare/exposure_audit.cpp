@@ -50,11 +50,12 @@ double effective_f_number(const ExposureFrame& f) {
 // ---- one frame on its own -------------------------------------------------------------------------------------------
 
 void set_mid_tone(const ExposureFrame& frame, FrameExposure& result) {
+  result.exposure_ev = set_exposure_ev(frame);
   if (!frame.tone) return;
   const double level = frame.tone->aim_median_linear.value_or(frame.tone->median_linear);
   if (!(level > 0)) return;
   result.measured_ev = std::log2(level / kMidToneLevel);
-  if (!set_exposure_ev(frame)) return;
+  if (!result.exposure_ev) return;
   // H = q L t / N^2 turned round. The light that the lens loses stands in q.
   LensLoss loss;
   loss.transmittance = frame.transmittance.value_or(loss.transmittance);

@@ -36,46 +36,79 @@ double huber_weight(double residual, double sigma) {
   return z <= kHuber ? 1 : kHuber / z;
 }
 
-// Alternating fit of tiles and frames with robust weights; the curve is given.
+// Levels of tiles and frames with robust weights; the curve is given.
 struct TwoWay {
   std::vector<double> tile, frame;
   double residual_ev = 0;
 };
 
+// Values of the tiles as exposures, with the weights of one round of least squares; 0 where a tile is not seen.
+struct TwoWayRound {
+  Eigen::MatrixXd values, weights;   // frames x tiles
+};
+
+// Least squares for given weights: the tiles are eliminated, the frames solved for, their weighted mean held at 0.
+void solve_round(const TwoWayRound& round, TwoWay& fit) {
+  const Eigen::Index n = round.values.rows(), p = round.values.cols();
+  Eigen::MatrixXd normal = Eigen::MatrixXd::Zero(n, n);
+  Eigen::VectorXd right = Eigen::VectorXd::Zero(n);
+  for (Eigen::Index t = 0; t < p; ++t) {
+    const Eigen::VectorXd w = round.weights.col(t);
+    const double sum = w.sum();
+    if (sum <= 0) continue;
+    const Eigen::VectorXd weighted = w.cwiseProduct(round.values.col(t));
+    normal.diagonal() += w;
+    normal.noalias() -= w * (w.transpose() / sum);
+    right += weighted - w * (weighted.sum() / sum);
+  }
+  // One constant is free, and every group of frames without a tile in common has one of its own.
+  normal.diagonal().array() += 1e-9 * std::max(1.0, normal.diagonal().maxCoeff());
+  const Eigen::VectorXd frames = normal.ldlt().solve(right);
+  for (Eigen::Index i = 0; i < n; ++i) fit.frame[static_cast<std::size_t>(i)] = frames[i];
+  for (Eigen::Index t = 0; t < p; ++t) {
+    const double sum = round.weights.col(t).sum();
+    if (sum <= 0) continue;
+    fit.tile[static_cast<std::size_t>(t)] = round.weights.col(t).dot(round.values.col(t) - frames) / sum;
+  }
+}
+
 TwoWay fit_two_way(const Tiles& tiles, const ToneShape& shape) {
-  const std::size_t n = tiles.size(), p = tiles.front().size();
-  TwoWay fit{std::vector<double>(p, 0), std::vector<double>(n, 0), 0};
-  double scale = 0.1;   // of the residual, in units of its own sigma at first
-  constexpr int kRounds = 40;
-  for (int round = 0; round < kRounds; ++round) {
-    double change = 0;
+  const auto n = static_cast<Eigen::Index>(tiles.size()), p = static_cast<Eigen::Index>(tiles.front().size());
+  TwoWay fit{std::vector<double>(tiles.front().size(), 0), std::vector<double>(tiles.size(), 0), 0};
+  TwoWayRound round{Eigen::MatrixXd::Zero(n, p), Eigen::MatrixXd::Zero(n, p)};
+  Eigen::MatrixXd sigmas = Eigen::MatrixXd::Ones(n, p);
+  const auto at = [&](Eigen::Index i, Eigen::Index t) -> const auto& {
+    return tiles[static_cast<std::size_t>(i)][static_cast<std::size_t>(t)];
+  };
+  for (Eigen::Index i = 0; i < n; ++i) {
+    for (Eigen::Index t = 0; t < p; ++t) {
+      if (!at(i, t)) continue;
+      round.values(i, t) = shape.exposure_ev(at(i, t)->level_ev);
+      sigmas(i, t) = at(i, t)->sigma_ev * shape.slope(at(i, t)->level_ev);
+      round.weights(i, t) = 1 / (sigmas(i, t) * sigmas(i, t));
+    }
+  }
+  constexpr int kRounds = 10;
+  for (int count = 0; count < kRounds; ++count) {
+    solve_round(round, fit);
     std::vector<double> residuals;
-    const auto pass = [&](std::size_t outer, std::size_t inner, auto at, std::vector<double>& out,
-                          const std::vector<double>& other) {
-      for (std::size_t a = 0; a < outer; ++a) {
-        double sum = 0, weights = 0;
-        for (std::size_t b = 0; b < inner; ++b) {
-          const auto& value = at(a, b);
-          if (!value) continue;
-          const double sigma = value->sigma_ev * shape.slope(value->level_ev);
-          const double target = shape.exposure_ev(value->level_ev) - other[b];
-          const double weight = huber_weight(target - out[a], std::hypot(sigma, scale)) / (sigma * sigma);
-          sum += weight * target, weights += weight;
-          residuals.push_back(target - out[a]);
-        }
-        if (weights == 0) continue;
-        change = std::max(change, std::abs(sum / weights - out[a]));
-        out[a] = sum / weights;
+    Eigen::MatrixXd left = Eigen::MatrixXd::Zero(n, p);
+    for (Eigen::Index i = 0; i < n; ++i) {
+      for (Eigen::Index t = 0; t < p; ++t) {
+        if (!at(i, t)) continue;
+        left(i, t) = round.values(i, t) - fit.tile[static_cast<std::size_t>(t)] - fit.frame[static_cast<std::size_t>(i)];
+        residuals.push_back(std::abs(left(i, t)));
       }
-    };
-    pass(p, n, [&](std::size_t a, std::size_t b) -> const auto& { return tiles[b][a]; }, fit.tile, fit.frame);
-    residuals.clear();
-    pass(n, p, [&](std::size_t a, std::size_t b) -> const auto& { return tiles[a][b]; }, fit.frame, fit.tile);
+    }
     if (residuals.empty()) return fit;
-    for (double& r : residuals) r = std::abs(r);
     fit.residual_ev = 1.4826 * median(std::move(residuals));
-    scale = std::clamp(fit.residual_ev, 0.003, 0.5);
-    if (round > 3 && change < 1e-5) break;
+    const double scale = std::clamp(fit.residual_ev, 0.003, 0.5);
+    for (Eigen::Index i = 0; i < n; ++i) {
+      for (Eigen::Index t = 0; t < p; ++t) {
+        if (!at(i, t)) continue;
+        round.weights(i, t) = huber_weight(left(i, t), std::hypot(sigmas(i, t), scale)) / (sigmas(i, t) * sigmas(i, t));
+      }
+    }
   }
   return fit;
 }

@@ -57,6 +57,7 @@ struct PullBack {
 // The audit of one frame. Levels in stops from the standard mid-tone (kMidToneLevel).
 struct FrameExposure {
   std::size_t set = 0;                       // index of its set
+  std::optional<double> exposure_ev;         // as set, log2(t S / N^2)
   std::optional<double> measured_ev;         // mid-tone of the aim, else of the frame
   std::optional<double> predicted_ev;
   std::optional<Interval> error_ev;          // measured - predicted; light changes of the set already taken off

@@ -7,6 +7,8 @@ namespace {
 
 constexpr Command kCommands[] = {
     {"check", "Judge frames one by one: capture, predicted, measured, verdict.", add_check},
+    {"exposure", "A set: clipping, level against the exposure that was set, the odd ones out, stops to pull back.",
+     add_exposure},
     {"predict", "The model of a shot or a plan: depth of field, blur, diffraction, motion, exposure.", add_predict},
 };
 

@@ -2,9 +2,12 @@
 
 #include <fmt/format.h>
 
+#include <algorithm>
+#include <charconv>
 #include <chrono>
 #include <cmath>
 #include <cstdio>
+#include <system_error>
 
 namespace focusfall {
 
@@ -46,6 +49,31 @@ std::optional<std::string> moved_time(const std::string& iso_time, double second
                                  clock.hours().count(), clock.minutes().count(), clock.seconds().count());
   if (!digits.empty()) text += fmt::format(".{:0{}}", rest, digits.size());
   return text + iso_time.substr(end);
+}
+
+std::optional<double> seconds_of_time(const std::string& iso_time) {
+  int year = 0, month = 0, day = 0, hour = 0, minute = 0, length = 0;
+  if (std::sscanf(iso_time.c_str(), "%4d-%2d-%2dT%2d:%2d:%n", &year, &month, &day, &hour, &minute, &length) != 5 ||
+      length == 0) {
+    return std::nullopt;
+  }
+  const std::chrono::year_month_day date{std::chrono::year{year}, std::chrono::month{static_cast<unsigned>(month)},
+                                         std::chrono::day{static_cast<unsigned>(day)}};
+  const std::size_t zone_at = std::min(iso_time.find_first_of("Z+-", static_cast<std::size_t>(length)), iso_time.size());
+  double second = 0;
+  const char* begin = iso_time.data() + length;
+  const auto [end, error] = std::from_chars(begin, iso_time.data() + zone_at, second);
+  if (!date.ok() || hour > 23 || minute > 59 || error != std::errc() || !(second >= 0 && second < 61)) return std::nullopt;
+
+  int zone_hours = 0, zone_minutes = 0;
+  char sign = '+';
+  if (zone_at < iso_time.size() && iso_time[zone_at] != 'Z' &&
+      std::sscanf(iso_time.c_str() + zone_at, "%c%2d:%2d", &sign, &zone_hours, &zone_minutes) < 2) {
+    return std::nullopt;
+  }
+  const double zone_s = (sign == '-' ? -1 : 1) * 60.0 * (60 * zone_hours + zone_minutes);
+  const auto days = static_cast<double>(std::chrono::sys_days{date}.time_since_epoch().count());
+  return ((days * 24 + hour) * 60 + minute) * 60 + second - zone_s;
 }
 
 }  // namespace focusfall
