@@ -20,6 +20,9 @@ namespace {
 constexpr double kMeterSigmaEv = 0.5;
 constexpr double kNormal95 = 1.959964;
 
+// A curve whose shape and contrast come from the frames leaves nothing to test in fewer than these. Judgement.
+constexpr std::size_t kLeastBentFrames = 12;
+
 // The level is compared in the middle of the frame, where a lens vignettes least: within this part of the half
 // diagonal. Corners lie beyond the second part.
 constexpr double kCentralRadius = 0.55, kCornerRadius = 0.8;
@@ -226,6 +229,11 @@ void test_set(std::span<const ExposureFrame> frames, const FrameGroup& group, co
     set.reason = reason_of(frames, group, same_light);
     return;
   }
+  if (set.curve_bent && tested.size() < kLeastBentFrames) {
+    set.tested.clear();
+    set.reason = NotTestable::curve_unknown;
+    return;
+  }
   set.audit = audit_set(tested, {.contrast_unknown = set.curve_bent});
   if (set.curve_bent) set.audit->slope = slope_by_halves(tested);
 }
@@ -296,6 +304,7 @@ const char* not_testable_text(NotTestable reason) {
     case NotTestable::settings_missing: return "f-number, exposure time or ISO is not recorded";
     case NotTestable::flash: return "flash fired, or it is not recorded whether it did";
     case NotTestable::scene_changes: return "the frames do not show the same scene";
+    case NotTestable::curve_unknown: return "the tone curve is not known, and the frames are too few to find it";
   }
   return "";
 }

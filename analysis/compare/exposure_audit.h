@@ -23,8 +23,9 @@ struct ExposureOptions {
                                    //   whose exposure mode or flash is not recorded count as manual, without flash
 };
 
-enum class NotTestable { tested, too_few_frames, automatic_exposure, settings_missing, flash, scene_changes };
-// One sentence for people.
+enum class NotTestable { tested, too_few_frames, automatic_exposure, settings_missing, flash, scene_changes,
+                         curve_unknown };
+// One clause for people.
 const char* not_testable_text(NotTestable reason);
 
 // Light in the corners against the centre, at one f-number, relative to the smallest opening of the set.
@@ -36,6 +37,8 @@ struct Vignetting {
 
 // Frames taken one after the other at exposures in equal steps.
 struct Bracket {
+  // Where the tone curve of the set is not known, measured_ev is scaled to span what was set: only how even the steps
+  // are is then measured.
   std::vector<std::size_t> frames;     // in the order taken
   double step_ev = 0;                  // as set, > 0
   std::vector<double> set_ev;          // of each frame against the first, as set

@@ -46,6 +46,20 @@ std::optional<std::vector<double>> exposures_of(std::span<const ExposureFrame> f
   return std::nullopt;
 }
 
+// Measured steps of unknown contrast, scaled to span what was set, by least squares through the first frame.
+void scale_to_setting(Bracket& bracket) {
+  double product = 0, square = 0;
+  for (std::size_t k = 0; k < bracket.frames.size(); ++k) {
+    if (!bracket.measured_ev[k]) continue;
+    product += *bracket.measured_ev[k] * bracket.set_ev[k];
+    square += *bracket.measured_ev[k] * *bracket.measured_ev[k];
+  }
+  if (square <= 0) return;
+  for (auto& measured : bracket.measured_ev) {
+    if (measured) measured = *measured * product / square;
+  }
+}
+
 }  // namespace
 
 std::vector<Bracket> find_brackets(std::span<const ExposureFrame> frames, const ExposureSet& set) {
@@ -64,6 +78,7 @@ std::vector<Bracket> find_brackets(std::span<const ExposureFrame> frames, const 
         const bool known = set.level_ev[k] && set.level_ev[first];
         bracket.measured_ev.push_back(known ? std::optional(*set.level_ev[k] - *set.level_ev[first]) : std::nullopt);
       }
+      if (set.curve_bent) scale_to_setting(bracket);
       brackets.push_back(std::move(bracket));
       taken = count;
       break;

@@ -52,6 +52,8 @@ inline constexpr IssueCode kIssueCodes[] = {
     // The model.
     {"focus-distance-unusable", "nearer than the lens can focus"},
     {"no-solution", "no setting fulfils the wish"},
+    // Sets.
+    {"tone-edited", "the file names software that may have changed its tone"},
 };
 
 constexpr bool is_issue_code(std::string_view code) {
