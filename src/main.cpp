@@ -15,6 +15,7 @@
 
 #include "metadata/read_capture.h"
 #include "src/commands/command.h"
+#include "src/commands/help_text.h"
 #include "src/output/data_stream.h"
 #include "src/output/progress.h"
 #include "src/output/visible_text.h"
@@ -27,21 +28,30 @@ constexpr const char* kAbout =
     "the pixels, and compares the two.";
 
 constexpr const char* kFooter =
-    "A bare folder runs cull, a bare file check. Exit codes: 0 done, 1 some frames could not be done, 2 wrong use, "
-    "3 the run could not go on, 130 interrupted.";
+    "A bare folder runs cull, a bare file check. focusfall COMMAND --help says more.\n\n"
+    "Exit codes: 0 done, 1 some frames could not be done, 2 wrong use, 3 the run could not go on, 130 interrupted.";
 
 bool is_command(const std::string& word) {
   return std::ranges::any_of(commands(), [&word](const Command& command) { return word == command.name; });
 }
 
-// "focusfall FOLDER" means cull and "focusfall FILE" check; what was chosen is said. Words that are neither a command
-// nor there are left to the parser.
+std::string command_names() {
+  std::string names;
+  for (const Command& command : commands()) names.append(names.empty() ? "" : ", ").append(command.name);
+  return names;
+}
+
+// "focusfall FOLDER" means cull and "focusfall FILE" check; what was chosen is said.
 void put_implied_command(std::vector<std::string>& arguments) {
-  if (arguments.empty() || arguments.front().starts_with('-') || is_command(arguments.front())) return;
+  if (arguments.empty()) throw WrongUse("a command or a photograph is needed; focusfall --help says more");
+  if (arguments.front().starts_with('-') || is_command(arguments.front())) return;
   std::error_code error;
   const bool folder = std::filesystem::is_directory(arguments.front(), error);
   const bool list = arguments.front().starts_with('@');
-  if (!folder && !list && !std::filesystem::exists(arguments.front(), error)) return;
+  if (!folder && !list && !std::filesystem::exists(std::filesystem::symlink_status(arguments.front(), error))) {
+    throw WrongUse(fmt::format("{} is neither a command ({}) nor a file that is there",
+                               visible_text(arguments.front()), command_names()));
+  }
   const std::string command = folder && is_command("cull") ? "cull" : "check";
   if (folder && command != "cull") {
     say("A bare folder runs cull; this build has no cull yet, so it runs check.");
@@ -63,9 +73,21 @@ void open_standard_descriptors() {
   }
 }
 
+// In our words, on one line.
+std::string parse_error_text(const CLI::ParseError& error) {
+  std::string text = error.what();
+  if (dynamic_cast<const CLI::ExtrasError*>(&error) != nullptr) {
+    text = "unknown option or word: " + text.substr(text.find(": ") + 2);
+  } else if (dynamic_cast<const CLI::RequiredError*>(&error) != nullptr && text.find("subcommand") != text.npos) {
+    text = "no command was given; known are " + command_names();
+  }
+  return visible_text(text);
+}
+
 ExitCode run(std::vector<std::string> arguments) {
   CLI::App app(kAbout, "focusfall");
   app.footer(kFooter);
+  app.formatter(help_formatter());
   app.set_version_flag("--version", "focusfall " FOCUSFALL_VERSION);
   app.require_subcommand(1);
   std::function<ExitCode()> chosen;
@@ -89,7 +111,7 @@ ExitCode run(std::vector<std::string> arguments) {
     return ExitCode::done;
   } catch (const CLI::ParseError& error) {
     const auto subcommands = app.get_subcommands();
-    throw WrongUse(fmt::format("{}\nfocusfall {}{}--help says more.", visible_text(error.what()),
+    throw WrongUse(fmt::format("{} (focusfall {}{}--help says more)", parse_error_text(error),
                                subcommands.empty() ? "" : subcommands.front()->get_name(),
                                subcommands.empty() ? "" : " "));
   }

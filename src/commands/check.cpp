@@ -65,7 +65,8 @@ class CheckRun {
   ExitCode run() {
     const Settings settings = load_settings(options_.settings);
     const Inputs inputs = load_inputs(options_.inputs);
-    layout_ = text_layout(terminal_columns(STDOUT_FILENO), longest_path(inputs.paths));
+    layout_ = text_layout(terminal_columns(STDOUT_FILENO), longest_name(inputs.paths));
+    layout_.bold = bold_is_wanted(STDOUT_FILENO);
     if (!options_.overlay.empty()) open_overlays(inputs.paths);
     if (options_.format == Format::csv) out_.write(csv_header());
 
@@ -82,9 +83,11 @@ class CheckRun {
   }
 
  private:
-  static int longest_path(const std::vector<std::string>& paths) {
+  static int longest_name(const std::vector<std::string>& paths) {
     int longest = 0;
-    for (const std::string& path : paths) longest = std::max(longest, text_columns(visible_text(path)));
+    for (const std::string& path : paths) {
+      longest = std::max(longest, text_columns(visible_text(path.substr(path.find_last_of('/') + 1))));
+    }
     return longest;
   }
 
@@ -120,25 +123,45 @@ class CheckRun {
     return open;
   }
 
-  std::string text_of(const FrameRecord& record) const {
+  std::string text_of(const FrameRecord& record) {
     switch (options_.format) {
       case Format::json: return json_line(frame_json(record, {.tiles = options_.tiles}));
       case Format::csv: return csv_line(record);
       case Format::text: break;
     }
-    return options_.brief ? brief_text(record, layout_) : frame_text(record, layout_);
+    return options_.brief ? brief_lines(record) : frame_text(record, layout_);
+  }
+
+  // A brief line under the heading of its folder, which stands once for all that follow in it.
+  std::string brief_lines(const FrameRecord& record) {
+    std::string text;
+    if (tally_.frames == 1) text += brief_heading(layout_);
+    if (const std::string folder = folder_heading(record.path, layout_); folder != folder_) {
+      folder_ = folder;
+      text += folder;
+    }
+    return text + brief_text(record, layout_);
   }
 
   const CheckOptions& options_;
   DataStream out_{STDOUT_FILENO};
   TextLayout layout_;
   Tally tally_;
+  std::string folder_;           // heading of the last brief line
   std::optional<OverlayFolder> overlays_;
 };
 
 }  // namespace
 
+constexpr const char* kExamples =
+    "Examples\n"
+    "  focusfall check boat.jpg\n"
+    "  focusfall check --brief shoot/\n"
+    "  focusfall check --aim 0.4,0.3,0.1,0.15 --overlay pictures boat.jpg\n"
+    "  focusfall check --format json shoot/ > frames.jsonl";
+
 std::function<ExitCode()> add_check(CLI::App& app) {
+  app.footer(kExamples);
   auto options = std::make_shared<CheckOptions>();
   add_input_argument(app, options->inputs, true);
   add_format_option(app, options->format, {Format::text, Format::json, Format::csv});
@@ -148,11 +171,10 @@ std::function<ExitCode()> add_check(CLI::App& app) {
                  "Folder for a picture of each frame (PNG, long side at most 1600 px): contours of blur, aim, line of best "
                  "focus, motion, clipped parts. Default: none.")
       ->type_name("DIR");
-  app.add_option("--level", options->values.level, "How much of a frame is measured: full or aim-only. Default: full.")
-      ->transform(CLI::CheckedTransformer(std::map<std::string, MeasureLevel>{{"full", MeasureLevel::full},
-                                                                             {"aim-only", MeasureLevel::aim_only}})
-                      .description(""))
-      ->type_name("LEVEL");
+  add_choice<MeasureLevel>(app, "--level", options->values.level,
+                           {{"full", MeasureLevel::full}, {"aim-only", MeasureLevel::aim_only}},
+                           "How much of a frame is measured; aim-only is several times faster and tells no side. "
+                           "Default: full.");
   app.add_option("--workers", options->workers, "Frames measured at a time. Default: one for each core.")
       ->check(CLI::Range(1, 256).description(""))
       ->type_name("COUNT");

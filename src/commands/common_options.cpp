@@ -46,11 +46,10 @@ std::string passed_over(const Inputs& inputs) {
 }  // namespace
 
 void add_input_argument(CLI::App& app, std::vector<std::string>& inputs, bool required) {
-  auto* option = app.add_option("files", inputs,
-                                "Photographs and folders; @LIST or @- for a list of paths, one a line or separated by "
-                                "NUL; ./@x for a name that starts with @.");
-  option->type_name("FILE");
-  if (required) option->required();
+  app.add_option("files", inputs,
+                 "Photographs and folders; @LIST or @- for a list of paths, one a line or separated by NUL; ./@x for a "
+                 "name that starts with @.")
+      ->type_name(required ? "FILE" : "[FILE]");
 }
 
 void add_value_options(CLI::App& app, UserValues& values) {
@@ -80,13 +79,12 @@ void add_settings_options(CLI::App& app, SettingsChoice& choice) {
 }
 
 void add_format_option(CLI::App& app, Format& format, const std::vector<Format>& offered) {
-  std::map<std::string, Format> names;
+  std::vector<std::pair<std::string, Format>> names;
   for (const Format one : offered) {
-    names.emplace(one == Format::text ? "text" : one == Format::json ? "json" : "csv", one);
+    names.emplace_back(one == Format::text ? "text" : one == Format::json ? "json" : "csv", one);
   }
-  app.add_option("--format", format, "Form of the data on standard output; json is one object a line. Default: text.")
-      ->transform(CLI::CheckedTransformer(names).description(""))
-      ->type_name(offered.size() == 3 ? "text|json|csv" : "text|json");
+  add_choice(app, "--format", format, names,
+             "Form of the data on standard output; json is one object a line. Default: text.");
 }
 
 Settings load_settings(const SettingsChoice& choice) {
@@ -97,6 +95,8 @@ Settings load_settings(const SettingsChoice& choice) {
 }
 
 Inputs load_inputs(const std::vector<std::string>& arguments) {
+  // Asked here and not of the parser: a mistyped option is the better message.
+  if (arguments.empty()) throw WrongUse("a photograph or a folder is needed");
   auto inputs = find_inputs(arguments, std::cin);
   if (!inputs) throw WrongUse(inputs.error().message);
   if (const std::string text = passed_over(*inputs); !text.empty()) say("Passed over: " + text + ".");

@@ -377,7 +377,16 @@ class PredictRun {
 
 }  // namespace
 
+constexpr const char* kExamples =
+    "Examples\n"
+    "  focusfall predict --focal-length 400mm --f-number 2.8 --focus-distance 30m --at 28m,33m\n"
+    "  focusfall predict --focal-length 400mm --hold-depth 28m..33m\n"
+    "  focusfall predict --focal-length 400mm --f-number 2.8 --focus-distance 30m --pixel-pitch 4.3um "
+    "--subject-speed 8m/s --hold-blur 3px\n"
+    "  focusfall predict boat.jpg";
+
 std::function<ExitCode()> add_predict(CLI::App& app) {
+  app.footer(kExamples);
   auto options = std::make_shared<PredictOptions>();
   add_input_argument(app, options->inputs, false);
   add_format_option(app, options->format, {Format::text, Format::json});

@@ -41,4 +41,10 @@ int terminal_columns(int descriptor) {
 
 bool is_terminal(int descriptor) { return isatty(descriptor) == 1; }
 
+bool bold_is_wanted(int descriptor) {
+  const char* kind = std::getenv("TERM");
+  return is_terminal(descriptor) && kind != nullptr && std::strcmp(kind, "dumb") != 0 &&
+         std::getenv("NO_COLOR") == nullptr;
+}
+
 }  // namespace focusfall

@@ -30,4 +30,7 @@ int terminal_columns(int descriptor);
 
 bool is_terminal(int descriptor);
 
+// A terminal that knows bold type (TERM is set and not "dumb"), and a person who did not ask for plain text (NO_COLOR).
+bool bold_is_wanted(int descriptor);
+
 }  // namespace focusfall

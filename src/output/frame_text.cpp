@@ -4,6 +4,7 @@
 
 #include <algorithm>
 #include <cmath>
+#include <numbers>
 #include <string_view>
 #include <vector>
 
@@ -11,6 +12,7 @@
 #include "src/output/names.h"
 #include "src/output/quantity_text.h"
 #include "src/output/visible_text.h"
+#include "src/pipeline/resolve.h"
 
 namespace focusfall {
 namespace {
@@ -18,6 +20,10 @@ namespace {
 constexpr int kLabelColumns = 13;      // two blanks, the label, two blanks
 constexpr int kWideColumns = 120;      // from here on brief lines hold the focus error and the clipping
 constexpr int kTextColumns = 100;      // prose gets no wider: longer lines are hard to read (judgement)
+
+std::string emphasised(const std::string& text, const TextLayout& layout) {
+  return layout.bold ? "\x1b[1m" + text + "\x1b[0m" : text;
+}
 
 // One labelled block of a paragraph; nothing where there is nothing to say.
 std::string block(std::string_view label, const std::vector<std::string>& lines, const TextLayout& layout) {
@@ -51,7 +57,8 @@ std::string focus_distance_text(const FocusDistance& distance) {
                                       : fmt::format("focus at infinity (beyond {})", distance_text(distance.low_m));
   }
   std::string text = "focus " + distance_text(distance.value_m);
-  if (distance.high_m > distance.low_m) {
+  // An interval below a hundredth is less than the digits that are shown.
+  if (distance.high_m - distance.low_m > 0.01 * distance.value_m) {
     text += fmt::format(" ({})", distance_range_text(distance.low_m, distance.high_m));
   }
   return distance.stale ? text + ", perhaps out of date" : text;
@@ -108,10 +115,29 @@ std::string blur_text(const BlurReading& reading, const FrameRecord& record) {
                      blur_disc_px(s.high), reading.edges);
 }
 
-std::string motion_text(std::string_view what, const std::optional<MotionReading>& motion) {
+int orientation_of(const FrameRecord& record) {
+  return record.capture && record.capture->orientation ? record.capture->orientation->value : 1;
+}
+
+// Direction in the picture as displayed: "level", "upright", "rising to the right at 30 degrees".
+std::string direction_text(double angle_deg, int orientation) {
+  constexpr double kDegree = std::numbers::pi / 180, kLevelDeg = 7;   // a hand's breadth on a horizon (judgement)
+  const FramePoint zero = displayed_point({0, 0}, orientation);
+  const FramePoint tip = displayed_point({std::cos(angle_deg * kDegree), std::sin(angle_deg * kDegree)}, orientation);
+  double rise_deg = std::atan2(zero.y - tip.y, tip.x - zero.x) / kDegree;   // y runs down
+  if (rise_deg > 90) rise_deg -= 180;
+  if (rise_deg <= -90) rise_deg += 180;
+  if (std::abs(rise_deg) < kLevelDeg) return "level";
+  if (std::abs(rise_deg) > 90 - kLevelDeg) return "upright";
+  return fmt::format("{} to the right at {:.0f}\xC2\xB0", rise_deg > 0 ? "rising" : "falling", std::abs(rise_deg));
+}
+
+std::string motion_text(std::string_view what, const std::optional<MotionReading>& motion, int orientation) {
   if (!motion) return {};
-  return fmt::format("{} {} ({:.1f} to {:.1f}) at {:.0f}\xC2\xB0", what, px_text(motion->length_px),
-                     motion->length_low_px, motion->length_high_px, motion->angle_deg);
+  // A lower bound of zero: no direction stands out.
+  if (!(motion->length_low_px > 0)) return fmt::format("no {} to tell (up to {})", what, px_text(motion->length_high_px));
+  return fmt::format("{} {} ({:.1f} to {:.1f}), {}", what, px_text(motion->length_px), motion->length_low_px,
+                     motion->length_high_px, direction_text(motion->angle_deg, orientation));
 }
 
 std::string clipping_text(const Clipping& c) {
@@ -136,12 +162,14 @@ std::vector<std::string> measurement_lines(const FrameRecord& record) {
   const Measurement& m = *record.measurement;
   std::vector<std::string> lines{"blur at the " + aim_origin_text(record) + blur_text(m.aim_blur, record)};
   if (m.best && m.best->reading.estimate) {
+    const FractionBox& box = m.best->box;
+    const FramePoint centre = displayed_point({box.x + box.width / 2, box.y + box.height / 2}, orientation_of(record));
     lines.push_back(fmt::format("sharpest part {}, {:.0f} % from the left, {:.0f} % from the top",
-                                blur_text(m.best->reading, record), 100 * (m.best->box.x + m.best->box.width / 2),
-                                100 * (m.best->box.y + m.best->box.height / 2)));
+                                blur_text(m.best->reading, record), 100 * centre.x, 100 * centre.y));
   }
   const std::string motion = joined(
-      {motion_text("motion", m.motion), motion_text("background motion", m.background_motion)}, "; ");
+      {motion_text("motion", m.motion, orientation_of(record)),
+       motion_text("background motion", m.background_motion, orientation_of(record))}, "; ");
   if (!motion.empty()) lines.push_back(motion);
   if (m.plane && m.plane->at_contact_px) {
     const Interval& l = *m.plane->at_contact_px;
@@ -159,11 +187,11 @@ std::string causes_text(const Verdict& verdict) {
   return joined(words, ", ");
 }
 
-std::vector<std::string> verdict_lines(const Verdict& verdict) {
+std::vector<std::string> verdict_lines(const Verdict& verdict, const TextLayout& layout) {
   std::string head = name_of(verdict.focus);
   if (const std::string causes = causes_text(verdict); !causes.empty()) head += ": " + causes;
   if (verdict.exposure != ExposureVerdict::unknown) head += fmt::format("; exposure {}", name_of(verdict.exposure));
-  std::vector<std::string> lines{head};
+  std::vector<std::string> lines{emphasised(head, layout)};
   if (!verdict.summary.empty()) lines.push_back(visible_text(verdict.summary));
   return lines;
 }
@@ -171,7 +199,7 @@ std::vector<std::string> verdict_lines(const Verdict& verdict) {
 std::string focus_error_text(const Verdict& verdict) {
   if (!verdict.defocus_limits) return {};
   const Interval& limits = *verdict.defocus_limits;
-  return fmt::format("{:+.1f} limits ({:+.1f} to {:+.1f})", limits.value, limits.low, limits.high);
+  return fmt::format("{:+.1f} ({:+.1f} to {:+.1f})", limits.value, limits.low, limits.high);
 }
 
 // Measured of acceptable: "8.2 of 3.0 px".
@@ -183,18 +211,45 @@ std::string blur_of_limit_text(const FrameRecord& record) {
   return fmt::format("{:.1f} of {:.1f} px", blur_disc_px(s.value), acceptable_blur_px(prediction));
 }
 
+// The clipped part for a brief line: "points .5 %, aim 2.4 %".
+std::string brief_clipping_text(const FrameRecord& record) {
+  if (!record.measurement || !record.measurement->clipping) return {};
+  const Clipping& c = *record.measurement->clipping;
+  if (c.kind == ClippedKind::none) return {};
+  std::string text = fmt::format("{} {}", name_of(c.kind), percent_text(c.any));
+  if (c.aim_any > 0) text += ", aim " + percent_text(c.aim_any);
+  return text;
+}
+
 // Columns of a brief line after the name.
-constexpr int kFocusColumns = 11, kBlurColumns = 16, kWhyColumns = 22, kErrorColumns = 30, kClippedColumns = 24;
+constexpr int kFocusColumns = 11, kBlurColumns = 14, kWhyColumns = 19, kErrorColumns = 26, kClippedColumns = 26;
+
+struct BriefCells {
+  std::string name, focus, blur, why, error, clipped;
+};
+
+std::string brief_line(const BriefCells& cells, const TextLayout& layout) {
+  std::string line = "  " + padded(shortened(cells.name, layout.path_columns), layout.path_columns) + "  ";
+  line += padded(cells.focus, kFocusColumns) + "  " + padded(cells.blur, kBlurColumns) + "  ";
+  line += padded(cells.why, kWhyColumns);
+  if (layout.columns >= kWideColumns) {
+    line += "  " + padded(cells.error, kErrorColumns) + "  " + padded(cells.clipped, kClippedColumns);
+  }
+  line.erase(line.find_last_not_of(' ') + 1);
+  return line + "\n";
+}
+
+std::string name_without_folder(const std::string& path) { return path.substr(path.find_last_of('/') + 1); }
 
 }  // namespace
 
-TextLayout text_layout(int columns, int longest_path_columns) {
-  constexpr int kGaps = 3 * 2;
-  int others = kFocusColumns + kBlurColumns + kWhyColumns + kGaps;
-  if (columns >= kWideColumns) others += kErrorColumns + kClippedColumns + 2 * 2;
-  constexpr int kLeastPath = 16;
+TextLayout text_layout(int columns, int longest_name_columns) {
+  constexpr int kIndent = 2, kGap = 2;
+  int others = kIndent + kFocusColumns + kBlurColumns + kWhyColumns + 3 * kGap;
+  if (columns >= kWideColumns) others += kErrorColumns + kClippedColumns + 2 * kGap;
+  constexpr int kLeastName = 20;
   return {.columns = columns,
-          .path_columns = std::clamp(longest_path_columns, kLeastPath, std::max(columns - others, kLeastPath))};
+          .path_columns = std::clamp(longest_name_columns, kLeastName, std::max(columns - others, kLeastName))};
 }
 
 std::string failure_text(const FrameRecord& record) {
@@ -203,32 +258,40 @@ std::string failure_text(const FrameRecord& record) {
 }
 
 std::string frame_text(const FrameRecord& record, const TextLayout& layout) {
-  std::string text = visible_text(record.path) + "\n";
+  std::string text = emphasised(visible_text(record.path), layout) + "\n";
   if (record.capture) text += block("capture", capture_lines(*record.capture), layout);
   if (record.prediction) text += block("predicted", prediction_lines(*record.prediction), layout);
   if (record.measurement) text += block("measured", measurement_lines(record), layout);
-  if (record.verdict) text += block("verdict", verdict_lines(*record.verdict), layout);
+  if (record.verdict) text += block("verdict", verdict_lines(*record.verdict, layout), layout);
   std::vector<std::string> notes;
   for (const Issue& issue : record.issues) notes.push_back(visible_text(issue.message));
   text += block(record.done ? "note" : "not done", notes, layout);
   return text + "\n";
 }
 
+std::string folder_heading(const std::string& path, const TextLayout& layout) {
+  const auto slash = path.find_last_of('/');
+  if (slash == std::string::npos) return {};
+  return emphasised(visible_text(path.substr(0, slash + 1)), layout) + "\n";
+}
+
+std::string brief_heading(const TextLayout& layout) {
+  return brief_line({"frame", "focus", "blur at aim", "why", "limits of depth of field", "clipped"}, layout);
+}
+
 std::string brief_text(const FrameRecord& record, const TextLayout& layout) {
-  std::string line = padded(shortened(visible_text(record.path), layout.path_columns), layout.path_columns) + "  ";
-  if (!record.verdict) return line + "not done: " + failure_text(record) + "\n";
-  const Verdict& verdict = *record.verdict;
-  line += padded(name_of(verdict.focus), kFocusColumns) + "  ";
-  line += padded(blur_of_limit_text(record), kBlurColumns) + "  ";
-  if (layout.columns >= kWideColumns) {
-    line += padded(focus_error_text(verdict), kErrorColumns) + "  ";
-    line += padded(record.measurement && record.measurement->clipping ? clipping_text(*record.measurement->clipping)
-                                                                      : std::string(),
-                   kClippedColumns) + "  ";
+  const std::string name = visible_text(name_without_folder(record.path));
+  if (!record.verdict) {
+    return "  " + padded(shortened(name, layout.path_columns), layout.path_columns) + "  not done: " +
+           failure_text(record) + "\n";
   }
-  line += causes_text(verdict);
-  line.erase(line.find_last_not_of(' ') + 1);
-  return line + "\n";
+  return brief_line({.name = name,
+                     .focus = name_of(record.verdict->focus),
+                     .blur = blur_of_limit_text(record),
+                     .why = causes_text(*record.verdict),
+                     .error = focus_error_text(*record.verdict),
+                     .clipped = brief_clipping_text(record)},
+                    layout);
 }
 
 }  // namespace focusfall
