@@ -1,13 +1,16 @@
 // Whole files: cut short, damaged, of other kinds, read by several threads at once.
 #include "metadata/read_capture.h"
 
+#include <fmt/format.h>
 #include <gtest/gtest.h>
 
-#include <fmt/format.h>
+#include <algorithm>
 #include <atomic>
 #include <chrono>
 #include <cmath>
 #include <cstring>
+#include <filesystem>
+#include <fstream>
 #include <random>
 #include <thread>
 
@@ -318,6 +321,39 @@ TEST(ReadCapture, DamagedFilesNeverThrowAndNeverGiveNonsense) {
   // Measured: 0.03 ms for each reading. A hundred times that means that a file sends the reader round in circles.
   EXPECT_LT(seconds, 60);
   RecordProperty("seconds", std::to_string(seconds));
+}
+
+// The notes of real cameras: npm packages exif 0.6.0 and jpeg-exif 1.1.4, both MIT, fetched by tests/fetch_open_data.sh.
+TEST(ReadCapture, DamagedCameraFilesNeverThrowAndNeverGiveNonsense) {
+  namespace fs = std::filesystem;
+  constexpr std::size_t kHead = 64 * 1024;
+  std::vector<fs::path> paths;
+  std::error_code error;
+  for (const char* package : {"exif/test", "jpeg-exif/test"}) {
+    for (const auto& entry : fs::directory_iterator(fs::path(FOCUSFALL_OPEN_DATA_FOLDER) / package, error)) {
+      const auto extension = entry.path().extension();
+      if (extension == ".jpg" || extension == ".JPG") paths.push_back(entry.path());
+    }
+  }
+  if (paths.empty()) GTEST_SKIP() << "The open photographs are not there; tests/fetch_open_data.sh fetches them.";
+  std::ranges::sort(paths);
+
+  std::mt19937 random(7);
+  constexpr int kMutations = 800;  // of each
+  for (const fs::path& path : paths) {
+    std::string text(kHead, '\0');
+    std::ifstream stream(path, std::ios::binary);
+    stream.read(text.data(), static_cast<std::streamsize>(text.size()));
+    text.resize(static_cast<std::size_t>(stream.gcount()));
+    const std::vector<std::byte> original = bytes_of(text);
+    for (int i = 0; i < kMutations; ++i) {
+      std::vector<std::byte> file = original;
+      for (int k = 0; k <= i % 40; ++k) damage(file, random);
+      CaptureReading reading;
+      ASSERT_NO_THROW(reading = read_capture(file, {4000, 3000})) << path << ", mutation " << i;
+      expect_sound(reading);
+    }
+  }
 }
 
 }  // namespace
