@@ -83,6 +83,11 @@ std::size_t ExifTags::count(std::string_view key) const {
   return value == nullptr ? 0 : static_cast<std::size_t>(value->count());
 }
 
+bool ExifTags::has_group(std::string_view start) const {
+  return std::any_of(data_.begin(), data_.end(),
+                     [&](const Exiv2::Exifdatum& datum) { return datum.groupName().starts_with(start); });
+}
+
 std::optional<std::int64_t> ExifTags::integer(std::string_view key, std::size_t component) const {
   const Exiv2::Value* value = find(key);
   if (value == nullptr) return std::nullopt;

@@ -33,6 +33,9 @@ class ExifTags {
   bool has(std::string_view key) const { return find(key) != nullptr; }
   std::size_t count(std::string_view key) const;
 
+  // Whether there is a tag of a group whose name starts so ("Canon" for Canon, CanonCs, CanonFi, ...).
+  bool has_group(std::string_view start) const;
+
   // Integers of any width, signed or not, and the bytes of undefined data.
   std::optional<std::int64_t> integer(std::string_view key, std::size_t component = 0) const;
 

@@ -175,10 +175,21 @@ std::optional<CoarseValue> pixel_pitch_um(const PitchEvidence& e, Remarks& remar
 
 namespace {
 
-// Makers of which no camera is known to leave out its note (judgement).
-bool always_writes_note(const std::string& make) {
-  constexpr std::array kMakes = {"Canon", "NIKON", "SONY", "OLYMPUS", "Panasonic", "FUJIFILM", "PENTAX"};
-  return std::ranges::any_of(kMakes, [&](const char* known_make) { return make.starts_with(known_make); });
+// Makers of which no camera is known to leave out its note (judgement), and how Exiv2 names the groups of the note.
+struct NoteMaker {
+  std::string_view make;
+  std::string_view group;
+};
+constexpr NoteMaker kNoteMakers[] = {{"Canon", "Canon"},         {"NIKON", "Nikon"},       {"SONY", "Sony"},
+                                     {"OLYMPUS", "Olympus"},     {"Panasonic", "Panasonic"}, {"FUJIFILM", "Fujifilm"},
+                                     {"PENTAX", "Pentax"}};
+
+// Raw files may hold the tags of the note without the note as a whole.
+bool note_is_gone(const ExifTags& tags) {
+  const std::string make = tags.text("Exif.Image.Make").value_or("");
+  return std::ranges::any_of(kNoteMakers, [&](const NoteMaker& maker) {
+    return make.starts_with(maker.make) && !tags.has("Exif.Photo.MakerNote") && !tags.has_group(maker.group);
+  });
 }
 
 }  // namespace
@@ -195,8 +206,7 @@ PitchEvidence pitch_evidence(const ExifTags& tags, DecodedSize decoded) {
   }
   evidence.equivalent_mm = tags.real("Exif.Photo.FocalLengthIn35mmFilm");
   if (evidence.equivalent_mm && *evidence.equivalent_mm <= 0) evidence.equivalent_mm.reset();  // 0: not known
-  evidence.rewritten =
-      always_writes_note(tags.text("Exif.Image.Make").value_or("")) && !tags.has("Exif.Photo.MakerNote");
+  evidence.rewritten = note_is_gone(tags);
   evidence.digital_zoom = tags.real("Exif.Photo.DigitalZoomRatio");
   return evidence;
 }

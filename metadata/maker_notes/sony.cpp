@@ -41,6 +41,12 @@ bool is_shape_of_picture(double width, double height, DecodedSize size) {
   return std::abs(width / height * size.height_px / size.width_px - 1) < kSameShape;
 }
 
+// Another tag of the group that `key` belongs to: notes of raw files have no signature and are a group of their own.
+std::string sibling(const char* key, const char* name) {
+  const std::string whole = key;
+  return whole.substr(0, whole.rfind('.') + 1) + name;
+}
+
 // 0x2027: width, height, x, y of the place that the body enlarges on playback. The centre without a frame of its own
 // is written when the place is not known. 0x2037: width, height, 0 if there is no frame.
 void take_focus_location(const NoteContext& context, const char* key, MakerNote& note) {
@@ -49,9 +55,9 @@ void take_focus_location(const NoteContext& context, const char* key, MakerNote&
   for (std::size_t i = 0; i < 4; ++i) v[i] = context.tags.real(key, i).value_or(0);
   if (v[0] <= 0 || v[1] <= 0 || v[2] <= 0 || v[3] <= 0 || v[2] > v[0] || v[3] > v[1]) return;
   if (!is_shape_of_picture(v[0], v[1], context.size)) return;
-  const bool has_frame = context.tags.integer("Exif.Sony1.0x2037", 2).value_or(0) != 0;
-  const double width = has_frame ? context.tags.real("Exif.Sony1.0x2037", 0).value_or(0) : 0;
-  const double height = has_frame ? context.tags.real("Exif.Sony1.0x2037", 1).value_or(0) : 0;
+  const bool has_frame = context.tags.integer(sibling(key, "0x2037"), 2).value_or(0) != 0;
+  const double width = has_frame ? context.tags.real(sibling(key, "0x2037"), 0).value_or(0) : 0;
+  const double height = has_frame ? context.tags.real(sibling(key, "0x2037"), 1).value_or(0) : 0;
   const bool in_centre = std::abs(v[2] - v[0] / 2) <= 1 && std::abs(v[3] - v[1] / 2) <= 1;
   if (in_centre && (width <= 0 || height <= 0)) return;
   note.focus_areas.push_back({(v[2] - width / 2) / v[0], (v[3] - height / 2) / v[1], width / v[0], height / v[1]});
@@ -65,7 +71,7 @@ void take_flexible_spot(const NoteContext& context, const char* key, MakerNote& 
   const auto x = context.tags.real(key, 0), y = context.tags.real(key, 1);
   if (!note.focus_areas.empty() || note.focus_mode == FocusMode::manual || !has_e_mount(context.model) || !x || !y)
     return;
-  if (context.tags.integer("Exif.Sony1.0x201c") != kFlexibleSpot || *x <= 0 || *y <= 0) return;
+  if (context.tags.integer(sibling(key, "0x201c")) != kFlexibleSpot || *x <= 0 || *y <= 0) return;
   if (*x < kWidth && *y < kHeight) note.focus_areas.push_back({*x / kWidth, *y / kHeight, 0, 0});
 }
 
@@ -90,15 +96,23 @@ constexpr take::Code<bool> kStabiliser[] = {{0, false}, {1, true}};
 // Compacts tell it by this tag: 1 at all times, 2 while the picture is taken.
 constexpr take::Code<bool> kAntiBlur[] = {{0, false}, {1, true}, {2, true}};
 
+// Sony1 has a signature, Sony2 none.
 constexpr NoteRow kRows[] = {
     {"Exif.Sony2Fp.FocusPosition2", take_focus_position},
     {"Exif.Sony1.0x2027", take_focus_location},
+    {"Exif.Sony2.0x2027", take_focus_location},
     {"Exif.Sony1.0x201b", take_focus_mode},
+    {"Exif.Sony2.0x201b", take_focus_mode},
     {"Exif.Sony1.0x201d", take_flexible_spot},
+    {"Exif.Sony2.0x201d", take_flexible_spot},
     {"Exif.Sony1.FocusMode", take::focus_mode<kOldFocusModes>},
+    {"Exif.Sony2.FocusMode", take::focus_mode<kOldFocusModes>},
     {"Exif.Sony1.ImageStabilization", take::stabiliser<kStabiliser>},
+    {"Exif.Sony2.ImageStabilization", take::stabiliser<kStabiliser>},
     {"Exif.Sony1.AntiBlur", take::stabiliser<kAntiBlur>},
+    {"Exif.Sony2.AntiBlur", take::stabiliser<kAntiBlur>},
     {"Exif.Sony1.SequenceNumber", take::sequence<0, 65535>},
+    {"Exif.Sony2.SequenceNumber", take::sequence<0, 65535>},
 };
 
 // "SONY DSC " or "SONY CAM " and three NUL bytes stand before the directory of most bodies.

@@ -125,6 +125,16 @@ TEST(SonyNote, TheFocusLocationHasTheSizeOfItsFrame) {
   EXPECT_TRUE(file.read().capture.focus_areas.empty());
 }
 
+TEST(SonyNote, NotesWithoutASignatureAreReadAlike) {
+  ExifFile file = file_of("SONY", "ILCE-6300");
+  file.set("Exif.Sony2.0x2027", Exiv2::unsignedShort, "6000 4000 1500 1000");
+  file.set("Exif.Sony2.0x2037", Exiv2::unsignedShort, "600 400 257").set("Exif.Sony2.0x201b", Exiv2::unsignedByte, "3");
+  const Capture capture = file.read().capture;
+  ASSERT_EQ(capture.focus_areas.size(), 1U);
+  EXPECT_DOUBLE_EQ(capture.focus_areas.front().box.width, 0.1);
+  EXPECT_EQ(capture.focus_mode.value().value, FocusMode::continuous);
+}
+
 TEST(SonyNote, TheFlexibleSpotCountsOnlyWhereTheCameraFocusedWithIt) {
   const auto areas = [](const char* area_mode, const char* focus_mode) {
     return file_of("SONY", "ILCE-6000")
