@@ -4,6 +4,7 @@
 
 #include <condition_variable>
 #include <deque>
+#include <exception>
 #include <map>
 #include <memory>
 #include <mutex>
@@ -47,12 +48,27 @@ class Run {
     std::vector<std::thread> threads;
     threads.emplace_back([this] { read_ahead(); });
     for (int i = 0; i < workers_; ++i) threads.emplace_back([this] { work(); });
-    PoolOutcome outcome = hand_out(deliver);
+    PoolOutcome outcome;
+    std::exception_ptr failure;   // of the receiver: told once every thread has ended
+    try {
+      outcome = hand_out(deliver);
+    } catch (...) {
+      failure = std::current_exception();
+      abandon();
+    }
     for (std::thread& thread : threads) thread.join();
+    if (failure) std::rethrow_exception(failure);
     return outcome;
   }
 
  private:
+  void abandon() {
+    std::lock_guard lock(mutex_);
+    stop_ = true;
+    queue_.clear();
+    changed_.notify_all();
+  }
+
   bool cancelled() const { return stop_ || (options_.cancel && options_.cancel->load()); }
 
   void read_ahead() {

@@ -23,7 +23,8 @@ struct PoolOptions {
 // Gives the next path, or std::nullopt at the end. Called from the reader's thread alone; it may wait.
 using NextPath = std::function<std::optional<std::string>()>;
 
-// Takes one record; false stops the run as `cancel` does. Called from the thread that called run_frames.
+// Takes one record; false stops the run as `cancel` does. Called from the thread that called run_frames. What it throws
+// ends the run and comes out of run_frames.
 using DeliverRecord = std::function<bool(FrameRecord&&)>;
 
 struct PoolOutcome {
