@@ -64,14 +64,31 @@ std::string focus_distance_text(const FocusDistance& distance) {
   return distance.stale ? text + ", perhaps out of date" : text;
 }
 
+// Whether a value came from a person and not from the file.
+bool is_said(Source source) { return source == Source::user || source == Source::settings; }
+
+// What a person said in place of the file is marked: "f/4 (user)".
+std::string with_origin(const std::string& text, Source source) {
+  return is_said(source) ? fmt::format("{} ({})", text, source_name(source)) : text;
+}
+
 std::vector<std::string> capture_lines(const Capture& c) {
   std::vector<std::string> settings, place;
-  if (c.focal_length_mm) settings.push_back(millimetres_text(c.focal_length_mm->value));
-  if (c.f_number) settings.push_back(f_number_text(c.f_number->value));
-  if (c.exposure_time_s) settings.push_back(time_text(c.exposure_time_s->value));
-  if (c.iso_speed) settings.push_back(fmt::format("ISO {:.0f}", c.iso_speed->value));
+  const auto add = [&settings](const OptionalSourced<double>& value, auto text_of) {
+    if (value) settings.push_back(with_origin(text_of(value->value), value->source));
+  };
+  add(c.focal_length_mm, millimetres_text);
+  add(c.f_number, f_number_text);
+  add(c.exposure_time_s, time_text);
+  add(c.iso_speed, [](double speed) { return fmt::format("ISO {:.0f}", speed); });
   if (c.flash_fired && c.flash_fired->value) settings.push_back("flash");
-  if (c.focus_distance) settings.push_back(focus_distance_text(c.focus_distance->value));
+  if (c.focus_distance) {
+    settings.push_back(with_origin(focus_distance_text(c.focus_distance->value), c.focus_distance->source));
+  }
+  if (c.pixel_pitch_um && is_said(c.pixel_pitch_um->source)) {
+    settings.push_back(
+        with_origin("pixels of " + micrometres_text(c.pixel_pitch_um->value.value), c.pixel_pitch_um->source));
+  }
   if (c.camera) place.push_back(visible_text(c.camera->value));
   if (c.lens) place.push_back(visible_text(c.lens->value));
   if (c.taken_at) place.push_back(visible_text(c.taken_at->value));
