@@ -14,9 +14,9 @@ FocusDistance distance_within(double value_m, double relative_bound);
 // middle of the two in 1/distance, in which blur is linear.
 FocusDistance distance_between(double a_m, double b_m);
 
-// What a lens or a writer calls infinity where nothing says from where on (judgement: the end of the scale of all but
-// the longest lenses).
-inline constexpr double kInfinityFromM = 50;
+// What a lens or a writer calls infinity where nothing says from where on (judgement: short lenses give their last
+// distance before it at some ten metres).
+inline constexpr double kInfinityFromM = 15;
 
 // At infinity, from `low_m` on.
 FocusDistance distance_at_infinity(double low_m);

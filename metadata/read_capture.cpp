@@ -30,7 +30,7 @@ std::mutex& parser_mutex() {
   return mutex;
 }
 
-// What one file holds, parsed. The image is kept because it owns the tags.
+// What one file holds, parsed.
 struct ParsedFile {
   Exiv2::ExifData exif;
   Exiv2::XmpData xmp;

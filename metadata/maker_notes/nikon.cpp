@@ -26,17 +26,17 @@ double focal_length_of(double code) {
   return 5 * std::exp2(code / 24);
 }
 
-// The noise passes this test by chance in about one of fifteen values.
-bool decrypted_focal_length_fits(double code, const NoteContext& context) {
+// The steps of the scale and the rounding of Exif.
+bool is_near(double decoded_mm, double focal_length_mm) {
   constexpr double kRelative = 0.06, kAbsoluteMm = 0.5;
-  if (!context.focal_length_mm) return false;
-  const double decoded = focal_length_of(code);
-  return std::abs(decoded - *context.focal_length_mm) <= kRelative * *context.focal_length_mm + kAbsoluteMm;
+  return std::abs(decoded_mm - focal_length_mm) <= kRelative * focal_length_mm + kAbsoluteMm;
 }
 
+// Noise passes this test by chance in some percent of the files.
 bool is_readable(const LensDataKeys& keys, const NoteContext& context) {
   const auto code = context.tags.integer(keys.focal_length);
-  return code && decrypted_focal_length_fits(static_cast<double>(*code), context);
+  if (!code || !context.focal_length_mm) return false;
+  return is_near(focal_length_of(static_cast<double>(*code)), *context.focal_length_mm);
 }
 
 // Metres as 0.01 x 10^(v/40).
@@ -49,20 +49,13 @@ constexpr double kStepBound = 0.03;
 // The finer scale of the newest mount: judgement, a little under half a step of the coarse one.
 constexpr double kFineBound = 0.02;
 
-// The last step but one before infinity: 10^(254/40) x 0.01 m would be 22 km; the lenses stop long before.
-constexpr double kFarthestStep = 255;
-
-FocusDistance nikon_infinity(double bound) {
-  return distance_at_infinity(distance_of(kFarthestStep / 2) * (1 - bound));
-}
-
 template <std::size_t layout>
 void take_distance(const NoteContext& context, const char* key, MakerNote& note) {
   const LensDataKeys& keys = kLensData[layout];
   const auto code = context.tags.integer(key);
   if (note.focus_distance || !code || !is_readable(keys, context)) return;
   note.focus_distance =
-      *code == 0 ? nikon_infinity(kStepBound) : distance_within(distance_of(static_cast<double>(*code)), kStepBound);
+      *code == 0 ? distance_at_infinity(kInfinityFromM) : distance_within(distance_of(static_cast<double>(*code)), kStepBound);
 }
 
 // Lenses of the newest mount: the structure is read by its offsets. 0x35: 1 for these lenses; 0x3c: focal length in mm;
@@ -71,10 +64,13 @@ void take_fine_distance(const NoteContext& context, const char*, MakerNote& note
   const auto bytes = context.tags.structure("NikonLd4");
   constexpr std::size_t kEnd = 0x50;
   if (note.focus_distance || bytes.size() < kEnd || bytes[0x35] != 1 || !context.focal_length_mm) return;
-  const auto focal_length = two_bytes(bytes, 0x3c, false);  // this part is little-endian in every file
-  if (std::abs(focal_length.value_or(0) - *context.focal_length_mm) > 0.06 * *context.focal_length_mm + 0.5) return;
+  // In whichever order of bytes: Exiv2 reads it as little-endian, and writes it as the note around it is written.
+  const auto fits = [&](bool big_endian) {
+    return is_near(two_bytes(bytes, 0x3c, big_endian).value_or(0), *context.focal_length_mm);
+  };
+  if (!fits(false) && !fits(true)) return;
   if (bytes[0x4c] == 0) {
-    note.focus_distance = nikon_infinity(kFineBound);
+    note.focus_distance = distance_at_infinity(kInfinityFromM);
     return;
   }
   const double steps = bytes[0x4f] + bytes[0x4e] / 256.0;

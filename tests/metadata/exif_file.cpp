@@ -47,14 +47,14 @@ std::vector<std::byte> jpeg_around(const std::vector<std::uint8_t>& tiff, const 
   return jpeg;
 }
 
-std::vector<std::byte> ExifFile::jpeg() const {
+std::vector<std::byte> ExifFile::jpeg(Exiv2::ByteOrder order) const {
   Exiv2::Blob blob;
-  Exiv2::ExifParser::encode(blob, Exiv2::littleEndian, exif);
+  Exiv2::ExifParser::encode(blob, order, exif);
   return jpeg_around({blob.begin(), blob.end()}, xmp);
 }
 
-CaptureReading ExifFile::read() const {
-  return read_capture(jpeg(), decoded);
+CaptureReading ExifFile::read(Exiv2::ByteOrder order) const {
+  return read_capture(jpeg(order), decoded);
 }
 
 bool has_remark(const CaptureReading& reading, const std::string& code) {

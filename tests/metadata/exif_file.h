@@ -22,8 +22,8 @@ struct ExifFile {
   ExifFile& set(const std::string& key, Exiv2::TypeId type, const std::string& text);
   ExifFile& set_bytes(const std::string& key, const std::vector<std::uint8_t>& bytes);
 
-  std::vector<std::byte> jpeg() const;
-  CaptureReading read() const;
+  std::vector<std::byte> jpeg(Exiv2::ByteOrder order = Exiv2::littleEndian) const;
+  CaptureReading read(Exiv2::ByteOrder order = Exiv2::littleEndian) const;
 };
 
 // SOI, the segments, a frame header of 1 x 1 px, a scan without content, EOI.

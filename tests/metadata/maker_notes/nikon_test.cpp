@@ -39,6 +39,7 @@ TEST(NikonNote, ZeroIsInfinity) {
   const auto distance = with_distance(0).read().capture.focus_distance;
   ASSERT_TRUE(distance);
   EXPECT_TRUE(std::isinf(distance->value.value_m) && std::isfinite(distance->value.low_m));
+  EXPECT_GT(distance->value.low_m, 1);
 }
 
 TEST(NikonNote, LensDataThatDoNotDecryptToTheFocalLengthAreNotBelieved) {
@@ -81,9 +82,11 @@ ExifFile with_fine_distance(int range_width, int fraction, int steps, int mount 
 }
 
 TEST(NikonNote, LensesOfTheNewMountGiveFinerSteps) {
-  const auto distance = with_fine_distance(4, 128, 80).read().capture.focus_distance;
-  ASSERT_TRUE(distance);
-  EXPECT_NEAR(distance->value.value_m, 0.01 * std::pow(10, 80.5 / 40), 1e-9);
+  for (const auto order : {Exiv2::littleEndian, Exiv2::bigEndian}) {
+    const auto distance = with_fine_distance(4, 128, 80).read(order).capture.focus_distance;
+    ASSERT_TRUE(distance) << order;
+    EXPECT_NEAR(distance->value.value_m, 0.01 * std::pow(10, 80.5 / 40), 1e-9) << order;
+  }
   const auto infinite = with_fine_distance(0, 128, 80).read().capture.focus_distance;
   ASSERT_TRUE(infinite);
   EXPECT_TRUE(std::isinf(infinite->value.value_m));
@@ -126,6 +129,17 @@ TEST(NikonNote, TheAreaOfContrastDetectionIsFoundInEveryVersion) {
     EXPECT_DOUBLE_EQ(areas.front().box.width, 0.1) << c.version;
     EXPECT_DOUBLE_EQ(areas.front().box.height, 0.1) << c.version;
   }
+}
+
+TEST(NikonNote, TheAreaIsReadInTheByteOrderOfTheNote) {
+  auto bytes = af_structure("0100", 1, 0x10, 0x1e);
+  for (std::size_t i = 0x10; i + 1 < bytes.size(); i += 2) std::swap(bytes[i], bytes[i + 1]);
+  ExifFile file = nikon_file();
+  file.set_bytes("Exif.Nikon3.0x00b7", bytes);
+  const auto areas = file.read(Exiv2::bigEndian).capture.focus_areas;
+  ASSERT_EQ(areas.size(), 1U);
+  EXPECT_DOUBLE_EQ(areas.front().box.x, 0.2);
+  EXPECT_DOUBLE_EQ(areas.front().box.height, 0.1);
 }
 
 TEST(NikonNote, AnUnknownPlaceIsNoArea) {
