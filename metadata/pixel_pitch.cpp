@@ -126,6 +126,10 @@ bool altered(const PitchEvidence& e, Remarks& remarks) {
                    remarks);
     return true;
   }
+  if (e.cropped_by_editor) {
+    remark_unknown("A raw developer cut off a part of the picture.", remarks);
+    return true;
+  }
   // Programs that write the tags anew put the size of their own picture beside the resolution of the camera's.
   const auto sensor = sensor_fraction(e);
   if (e.rewritten && !sensor && !e.equivalent_mm) {

@@ -25,6 +25,7 @@ struct PitchEvidence {
   std::optional<double> focal_length_mm;
   std::optional<double> equivalent_mm;  // FocalLengthIn35mmFilm
   std::optional<double> digital_zoom;   // DigitalZoomRatio
+  bool cropped_by_editor = false;               // XMP: a raw developer says that it cut off a part
   bool rewritten = false;               // the maker note is gone that this maker's cameras always write
   bool reduced_by_camera = false;       // maker note: a smaller picture of the whole sensor was asked for
 };

@@ -140,8 +140,21 @@ void merge_note(const MakerNote& note, Capture& capture, Remarks& remarks) {
   }
 }
 
-void derive_pitch(const ExifTags& tags, DecodedSize decoded, const MakerNote& note, CaptureReading& reading) {
-  PitchEvidence evidence = pitch_evidence(tags, decoded);
+// Raw developers say in their own settings whether they cut off a part; sizes alone do not show it where the shape is
+// kept and the recorded size written anew.
+bool is_cropped_by_editor(const XmpTags& xmp) {
+  const std::string crop = xmp.text("Xmp.crs.HasCrop").value_or("");
+  return crop == "True" || crop == "true";
+}
+
+struct TagsOfFile {
+  const ExifTags& exif;
+  const XmpTags& xmp;
+};
+
+void derive_pitch(const TagsOfFile& tags, DecodedSize decoded, const MakerNote& note, CaptureReading& reading) {
+  PitchEvidence evidence = pitch_evidence(tags.exif, decoded);
+  evidence.cropped_by_editor = is_cropped_by_editor(tags.xmp);
   if (reading.capture.focal_length_mm) evidence.focal_length_mm = reading.capture.focal_length_mm->value;
   evidence.sensor_active_width_px = note.sensor_active_width_px;
   evidence.sensor_diagonal_mm = note.sensor_diagonal_mm;
@@ -152,17 +165,18 @@ void derive_pitch(const ExifTags& tags, DecodedSize decoded, const MakerNote& no
 
 // Areas that the camera recorded have their place in the picture that it wrote; one that was cropped or turned since
 // has its subject elsewhere. Regions of XMP are for programs to keep in order.
-void drop_misplaced_areas(DecodedSize recorded, DecodedSize decoded, CaptureReading& reading) {
+void drop_misplaced_areas(const TagsOfFile& tags, DecodedSize decoded, CaptureReading& reading) {
+  const DecodedSize recorded = recorded_size(tags.exif).value_or(decoded);
   if (!is_known(recorded) || !is_known(decoded)) return;
-  if (same_shape(recorded, decoded) && !is_turned(recorded, decoded)) return;
+  const bool cropped = is_cropped_by_editor(tags.xmp) || !same_shape(recorded, decoded);
+  if (!cropped && !is_turned(recorded, decoded)) return;
   const auto dropped =
       std::erase_if(reading.capture.focus_areas, [](const FocusArea& area) { return area.source != Source::xmp; });
   if (dropped == 0) return;
   reading.remarks.push_back(
       {kFocusAreaMisplaced,
-       fmt::format("The camera recorded {} x {} px and the picture holds {} x {} px: it was cropped "
-                   "or turned, and the focus area is not where it was.",
-                   recorded.width_px, recorded.height_px, decoded.width_px, decoded.height_px)});
+       fmt::format("The picture of {} x {} px was {} since it was recorded, and the focus area is not where it was.",
+                   decoded.width_px, decoded.height_px, cropped ? "cropped" : "turned")});
 }
 
 void interpret(const ParsedFile& parsed, DecodedSize decoded, CaptureReading& reading) {
@@ -179,17 +193,18 @@ void interpret(const ParsedFile& parsed, DecodedSize decoded, CaptureReading& re
   }
   merge_note(maker.note, capture, reading.remarks);
   fill(capture.lens, lens_by_specification(tags), Source::exif);
-  read_standard_xmp(XmpTags(parsed.xmp), decoded, capture, reading.remarks);
+  const XmpTags xmp(parsed.xmp);
+  read_standard_xmp(xmp, decoded, capture, reading.remarks);
 
   drop_serial_of_zeros(capture.body_serial);
   drop_serial_of_zeros(capture.lens_serial);
   shorten_texts(capture);
-  drop_misplaced_areas(recorded_size(tags).value_or(DecodedSize{}), decoded, reading);
+  drop_misplaced_areas({tags, xmp}, decoded, reading);
   std::ranges::stable_sort(capture.focus_areas, {}, &FocusArea::kind);
   if (capture.focus_distance && capture.focal_length_mm) {
     allow_for_origin(capture.focus_distance->value, capture.focal_length_mm->value);
   }
-  derive_pitch(tags, decoded, maker.note, reading);
+  derive_pitch({tags, xmp}, decoded, maker.note, reading);
 }
 
 }  // namespace

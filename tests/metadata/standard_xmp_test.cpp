@@ -143,6 +143,25 @@ TEST(StandardXmp, TheApproximateDistanceComesLastAndAllBitsSetAreInfinity) {
   EXPECT_DOUBLE_EQ(file.read().capture.focus_distance.value().value.value_m, 6);
 }
 
+TEST(StandardXmp, ACropByARawDeveloperMakesPitchAndFocusAreaUnknown) {
+  // The shape is kept and the recorded size written anew: nothing else shows it.
+  const auto reading = [](const char* has_crop) {
+    ExifFile file;
+    file.set("Exif.Photo.FocalLength", "50/1").set("Exif.Photo.FocalLengthIn35mmFilm", "50");
+    file.set("Exif.Photo.PixelXDimension", "3000").set("Exif.Photo.PixelYDimension", "2000");
+    file.set("Exif.Photo.SubjectArea", "600 400");
+    file.xmp = packet(std::string("xmlns:crs=\"http://ns.adobe.com/camera-raw-settings/1.0/\" crs:HasCrop=\"") + has_crop +
+                      "\"");
+    file.decoded = {3000, 2000};
+    return file.read();
+  };
+  EXPECT_TRUE(reading("False").capture.pixel_pitch_um);
+  EXPECT_EQ(reading("False").capture.focus_areas.size(), 1U);
+  EXPECT_FALSE(reading("True").capture.pixel_pitch_um);
+  EXPECT_TRUE(has_remark(reading("True"), kPitchUnknown));
+  EXPECT_TRUE(reading("True").capture.focus_areas.empty());
+}
+
 TEST(StandardXmp, NumbersAreFractionsOrDecimalsAndNothingElse) {
   EXPECT_EQ(number_in_text("28/10"), 2.8);
   EXPECT_EQ(number_in_text("-0.5"), -0.5);
