@@ -184,8 +184,8 @@ struct NoteMaker {
   std::string_view make;
   std::string_view group;
 };
-constexpr NoteMaker kNoteMakers[] = {{"Canon", "Canon"},         {"NIKON", "Nikon"},       {"SONY", "Sony"},
-                                     {"OLYMPUS", "Olympus"},     {"Panasonic", "Panasonic"}, {"FUJIFILM", "Fujifilm"},
+constexpr NoteMaker kNoteMakers[] = {{"Canon", "Canon"},     {"NIKON", "Nikon"},         {"SONY", "Sony"},
+                                     {"OLYMPUS", "Olympus"}, {"Panasonic", "Panasonic"}, {"FUJIFILM", "Fujifilm"},
                                      {"PENTAX", "Pentax"}};
 
 // Raw files may hold the tags of the note without the note as a whole.

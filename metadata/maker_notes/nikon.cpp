@@ -54,8 +54,8 @@ void take_distance(const NoteContext& context, const char* key, MakerNote& note)
   const LensDataKeys& keys = kLensData[layout];
   const auto code = context.tags.integer(key);
   if (note.focus_distance || !code || !is_readable(keys, context)) return;
-  note.focus_distance =
-      *code == 0 ? distance_at_infinity(kInfinityFromM) : distance_within(distance_of(static_cast<double>(*code)), kStepBound);
+  note.focus_distance = *code == 0 ? distance_at_infinity(kInfinityFromM)
+                                   : distance_within(distance_of(static_cast<double>(*code)), kStepBound);
 }
 
 // Lenses of the newest mount: the structure is read by its offsets. 0x35: 1 for these lenses; 0x3c: focal length in mm;

@@ -29,8 +29,8 @@ bool is_in_place(const NoteContext& context) {
   return !counts_from_header || offsets_lie_in_note(context, 6);
 }
 
-constexpr Maker kMakers[] = {
-    {"PENTAX", kRows, is_in_place}, {"ASAHI", kRows, is_in_place}, {"RICOH", kRows, is_in_place}};
+// Cameras of the company's former name, Asahi, use the same tags for other codes and are not read.
+constexpr Maker kMakers[] = {{"PENTAX", kRows, is_in_place}, {"RICOH", kRows, is_in_place}};
 
 }  // namespace
 

@@ -323,7 +323,8 @@ TEST(ReadCapture, DamagedFilesNeverThrowAndNeverGiveNonsense) {
   RecordProperty("seconds", std::to_string(seconds));
 }
 
-// The notes of real cameras: npm packages exif 0.6.0 and jpeg-exif 1.1.4, both MIT, fetched by tests/fetch_open_data.sh.
+// The notes of real cameras: npm packages exif 0.6.0 and jpeg-exif 1.1.4, both MIT, fetched by
+// tests/fetch_open_data.sh.
 TEST(ReadCapture, DamagedCameraFilesNeverThrowAndNeverGiveNonsense) {
   namespace fs = std::filesystem;
   constexpr std::size_t kHead = 64 * 1024;

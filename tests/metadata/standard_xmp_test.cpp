@@ -150,8 +150,8 @@ TEST(StandardXmp, ACropByARawDeveloperMakesPitchAndFocusAreaUnknown) {
     file.set("Exif.Photo.FocalLength", "50/1").set("Exif.Photo.FocalLengthIn35mmFilm", "50");
     file.set("Exif.Photo.PixelXDimension", "3000").set("Exif.Photo.PixelYDimension", "2000");
     file.set("Exif.Photo.SubjectArea", "600 400");
-    file.xmp = packet(std::string("xmlns:crs=\"http://ns.adobe.com/camera-raw-settings/1.0/\" crs:HasCrop=\"") + has_crop +
-                      "\"");
+    file.xmp = packet(std::string("xmlns:crs=\"http://ns.adobe.com/camera-raw-settings/1.0/\" crs:HasCrop=\"") +
+                      has_crop + "\"");
     file.decoded = {3000, 2000};
     return file.read();
   };
