@@ -6,9 +6,9 @@
 #include <algorithm>
 #include <cmath>
 #include <limits>
-#include <mutex>
 
 #include "metadata/exif_tags.h"
+#include "metadata/exiv2_lock.h"
 #include "metadata/focus_area.h"
 #include "metadata/focus_distance.h"
 #include "metadata/maker_notes/maker_note.h"
@@ -22,14 +22,6 @@
 namespace focusfall {
 namespace {
 
-// Exiv2's XMP parser keeps state of its own: with several threads some readings lost all XMP without an error, even
-// with the lock that XmpParser::initialize takes. One thread opens and parses at a time; it takes some hundredths of
-// a millisecond for a JPEG.
-std::mutex& parser_mutex() {
-  static std::mutex mutex;
-  return mutex;
-}
-
 // What one file holds, parsed.
 struct ParsedFile {
   Exiv2::ExifData exif;
@@ -40,7 +32,7 @@ struct ParsedFile {
 ParsedFile parse(std::span<const std::byte> file, Remarks& remarks) {
   ParsedFile parsed;
   if (file.empty() || file.size() > static_cast<std::size_t>(std::numeric_limits<long>::max())) return parsed;
-  const std::lock_guard lock(parser_mutex());
+  const std::lock_guard lock(exiv2_mutex());
   try {
     auto image =
         Exiv2::ImageFactory::open(reinterpret_cast<const Exiv2::byte*>(file.data()), static_cast<long>(file.size()));
