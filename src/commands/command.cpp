@@ -9,6 +9,7 @@ constexpr Command kCommands[] = {
     {"check", "Judge frames one by one: capture, predicted, measured, verdict.", add_check},
     {"exposure", "A set: clipping, level against the exposure that was set, the odd ones out, stops to pull back.",
      add_exposure},
+    {"lens", "Front or back focus of a lens and body from many frames: bias, repeatability, trends.", add_lens},
     {"predict", "The model of a shot or a plan: depth of field, blur, diffraction, motion, exposure.", add_predict},
 };
 

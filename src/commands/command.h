@@ -37,6 +37,7 @@ std::span<const Command> commands();
 
 std::function<ExitCode()> add_check(CLI::App& app);
 std::function<ExitCode()> add_exposure(CLI::App& app);
+std::function<ExitCode()> add_lens(CLI::App& app);
 std::function<ExitCode()> add_predict(CLI::App& app);
 
 // Set by the first interrupt; frames begun are finished, no other is begun. A second interrupt ends the program.

@@ -1,0 +1,149 @@
+// `lens`: does this lens on this body focus in front or behind, by how much, and how sure is that?
+#include <fmt/format.h>
+#include <unistd.h>
+
+#include <CLI/CLI.hpp>
+#include <algorithm>
+#include <map>
+#include <memory>
+#include <optional>
+#include <string>
+#include <vector>
+
+#include "src/commands/command.h"
+#include "src/commands/common_options.h"
+#include "src/commands/lens_records.h"
+#include "src/output/data_stream.h"
+#include "src/output/frame_json.h"
+#include "src/output/lens_report.h"
+#include "src/output/progress.h"
+#include "src/output/visible_text.h"
+#include "src/pipeline/lens_input.h"
+
+namespace focusfall {
+namespace {
+
+constexpr const char* kCautions =
+    "Never point a long lens at or near the sun, by eye or by sensor. A finding is evidence, not a repair order: adjust "
+    "a lens or body by its maker's procedure or leave it to a qualified technician. Keep the originals.";
+
+struct LensOptions {
+  RecordRequest request;
+  Format format = Format::text;
+  bool brief = false;
+  std::vector<ApproachRule> approach;
+  LensReportOptions report;
+};
+
+class LensRun {
+ public:
+  explicit LensRun(const LensOptions& options) : options_(options) {}
+
+  ExitCode run() {
+    const GatheredRecords gathered = gather_records(options_.request);
+    if (gathered.interrupted) return ExitCode::interrupted;
+    if (gathered.read_back > 0 && options_.request.values.near_side)
+      throw WrongUse("--near-side is for photographs; records of check hold the side already");
+    const LensInput input = lens_input(gathered.records, options_.approach);
+    ask_for_optics(gathered.records, input);
+    warn_of_copies(input);
+    const LensReport report = lens_report(input.readings, options_.report);
+    write({gathered.records, input, report});
+    return gathered.complete ? ExitCode::done : ExitCode::frames_missing;
+  }
+
+ private:
+  // A run in which nothing counts because the files do not hold what is needed: the person can say it.
+  static void ask_for_optics(const std::vector<FrameRecord>& records, const LensInput& input) {
+    if (!input.readings.empty()) return;
+    bool focal_length = false, f_number = false, pitch = false;
+    for (std::size_t i = 0; i < records.size(); ++i) {
+      if (input.left_out[i] != LeftOut::no_optics) continue;
+      const Capture& capture = *records[i].capture;
+      focal_length = focal_length || !capture.focal_length_mm;
+      f_number = f_number || !capture.f_number;
+      pitch = pitch || (capture.focal_length_mm && capture.f_number);
+    }
+    std::string options;
+    const auto ask = [&](bool needed, const char* option) {
+      if (needed) options += (options.empty() ? "" : ", ") + std::string(option);
+    };
+    ask(focal_length, "--focal-length");
+    ask(f_number, "--f-number");
+    ask(pitch, "--pixel-pitch or --sensor");
+    if (!options.empty()) throw WrongUse(fmt::format("no file records what is needed; give {}", options));
+  }
+
+  static void warn_of_copies(const LensInput& input) {
+    const auto copies = std::ranges::count(input.left_out, std::optional(LeftOut::copy));
+    if (copies == 0) return;
+    say(fmt::format("{} {} measured to the last digit as an earlier frame: a copied file is not a repeat, and does not "
+                    "count.",
+                    copies, copies == 1 ? "frame" : "frames"));
+  }
+
+  void write(const LensOutput& output) {
+    switch (options_.format) {
+      case Format::json:
+        for (const auto& line : lens_frames_json(output)) {
+          if (!out_.write(json_line(line))) return;
+        }
+        out_.write(json_line(lens_set_json(output)));
+        return;
+      case Format::csv:
+        out_.write(lens_csv_header() + lens_csv_lines(output));
+        return;
+      case Format::text: break;
+    }
+    int longest = 0;
+    for (const FrameRecord& record : output.records)
+      longest = std::max(longest, text_columns(visible_text(record.path)));
+    out_.write(lens_text(output, {.layout = text_layout(terminal_columns(STDOUT_FILENO), longest),
+                                  .frames = !options_.brief}));
+  }
+
+  const LensOptions& options_;
+  DataStream out_{STDOUT_FILENO};
+};
+
+}  // namespace
+
+std::function<ExitCode()> add_lens(CLI::App& app) {
+  auto options = std::make_shared<LensOptions>();
+  app.footer(kCautions);
+  add_input_argument(app, options->request.inputs, true);
+  app.get_option("files")->description(
+      "Photographs, folders, and files of records that check --format json wrote; @LIST or @- for a list of paths, one "
+      "a line or separated by NUL; ./@x for a name that starts with @.");
+  add_format_option(app, options->format, {Format::text, Format::json, Format::csv});
+  app.add_flag("--brief", options->brief, "Text without a line for every frame. Default: off.");
+  app.add_option_function<std::vector<std::string>>(
+         "--approach",
+         [options](const std::vector<std::string>& texts) {
+           for (const std::string& text : texts) {
+             const auto rule = parse_approach(text);
+             if (!rule) throw CLI::ValidationError("--approach", rule.error());
+             options->approach.push_back(*rule);
+           }
+         },
+         "From which side focus was approached: near or far for all frames, near=FOLDER or far=FOLDER for those of a "
+         "folder or a file; may be given again. Default: not known.")
+      ->type_name("SIDE[=PATH]")
+      ->allow_extra_args(false);
+  app.add_option("--series", options->report.kind,
+                 "test: frames made to test the lens; ordinary: any others, which give a finding from 20 acts of "
+                 "focusing on. Default: test where every aim lies on the surface, at one distance and within four "
+                 "hours.")
+      ->transform(CLI::CheckedTransformer(std::map<std::string, SeriesKind>{{"test", SeriesKind::test_series},
+                                                                           {"ordinary", SeriesKind::ordinary_frames}})
+                      .description(""))
+      ->type_name("KIND");
+  app.add_option("--workers", options->request.workers, "Frames measured at a time. Default: one for each core.")
+      ->check(CLI::Range(1, 256).description(""))
+      ->type_name("COUNT");
+  add_value_options(app, options->request.values);
+  add_settings_options(app, options->request.settings);
+  return [options] { return LensRun(*options).run(); };
+}
+
+}  // namespace focusfall

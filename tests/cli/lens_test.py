@@ -1,0 +1,150 @@
+"""The command lens from the outside: its finding on the bench series, its forms of output, bad input."""
+import csv
+import io
+import json
+import time
+import unittest
+
+import jsonschema
+
+from program import DONE, FRAMES_MISSING, SAMPLES, TOP, WRONG_USE, CommandLineTest, run
+
+SCHEMA_JSON = json.loads((TOP / "src/output/schema/lens.schema.json").read_text())
+VALIDATOR = jsonschema.Draft202012Validator(SCHEMA_JSON)
+BENCH = sorted(SAMPLES.glob("bench-??.jpg"))
+
+
+def bench_truth_um():
+    """Mean of the twelve true values: what a perfect reading of these frames gives."""
+    rows = csv.DictReader(io.StringIO((SAMPLES / "truth.csv").read_text()))
+    values = [float(row["defocus_um"]) for row in rows if (SAMPLES / row["file"]) in BENCH]
+    assert len(values) == 12
+    return sum(values) / 12
+
+
+class LensTest(CommandLineTest):
+    @classmethod
+    def setUpClass(cls):
+        cls.stored = run("check", "--format", "json", *map(str, BENCH)).out
+
+    def lens(self, text, *options):
+        return run("lens", "--format", "json", str(self.write("records.jsonl", text.encode())), *options)
+
+    def records(self):
+        return [json.loads(line) for line in self.stored.splitlines()]
+
+    @staticmethod
+    def lines(records):
+        return "".join(json.dumps(record) + "\n" for record in records)
+
+    def assert_valid(self, result):
+        for record in result.records:
+            for error in VALIDATOR.iter_errors(record):
+                self.fail(f"{list(error.path)}: {error.message}")
+
+    def test_schema_is_a_schema_and_refuses_other_findings(self):
+        jsonschema.Draft202012Validator.check_schema(SCHEMA_JSON)
+        broken = self.lens(self.stored).records[-1]
+        self.assertTrue(VALIDATOR.is_valid(broken))
+        broken["groups"][0]["finding"] = "broken"
+        self.assertFalse(VALIDATOR.is_valid(broken))
+
+    def test_finds_the_back_focus_of_the_bench_series(self):
+        result = self.lens(self.stored)
+        self.assertEqual(result.code, DONE, result.err)
+        self.assert_valid(result)
+        self.assertEqual([line["kind"] for line in result.records], ["frame"] * 12 + ["set"])
+        found = result.records[-1]
+        (group,) = found["groups"]
+        self.assertEqual((found["finding"], group["used"], group["acquisitions"]), ("back focus", 12, 12))
+        self.assertLess(group["bias_um_low"], bench_truth_um())
+        self.assertGreater(group["bias_um_high"], bench_truth_um())
+
+    def test_photographs_and_their_records_say_the_same(self):
+        direct = run("lens", "--format", "json", *map(str, BENCH)).records[-1]["groups"][0]
+        stored = self.lens(self.stored).records[-1]["groups"][0]
+        self.assertEqual(direct["finding"], stored["finding"])
+        self.assertAlmostEqual(direct["bias_um"], stored["bias_um"], delta=0.01)   # records hold five digits
+
+    def test_text_and_csv(self):
+        path = str(self.write("records.jsonl", self.stored.encode()))
+        text = run("lens", path)
+        self.assertIn("Back focus: focus falls", text.out.replace("\n             ", " "))
+        self.assertIn("Lens or body cannot be told from these frames", text.out)
+        rows = list(csv.DictReader(io.StringIO(run("lens", "--format", "csv", path).out)))
+        self.assertEqual([row["finding"] for row in rows], ["back focus"])
+
+    def test_help_carries_the_cautions(self):
+        text = " ".join(run("lens", "--help").out.split())
+        self.assertIn("Never point a long lens at or near the sun", text)
+        self.assertIn("evidence, not a repair order", text)
+
+    def test_too_few_frames_are_no_error(self):
+        result = self.lens(self.lines(self.records()[:4]))
+        self.assertEqual(result.code, DONE)
+        self.assertEqual(result.records[-1]["finding"], "not enough evidence")
+        self.assertIn("4 usable frames", result.records[-1]["summary"])
+
+    def test_a_copied_file_is_no_repeat(self):
+        result = self.lens(self.lines(self.records()[:1] * 8))
+        self.assertEqual(result.code, DONE)
+        self.assertEqual(result.records[-1]["left_out"], {"copy": 7})
+        self.assertIn("a copied file is not a repeat", result.err)
+        self.assertEqual(result.records[-1]["finding"], "not enough evidence")
+
+    def test_several_lenses_are_reported_each(self):
+        records = self.records()
+        for record in records[6:]:
+            record["capture"]["lens_serial"] = "LL-0852"
+        result = self.lens(self.lines(records))
+        self.assert_valid(result)
+        self.assertEqual(len(result.records[-1]["groups"]), 2)
+
+    def test_frames_are_left_out_for_a_reason_and_never_for_what_they_say(self):
+        records = self.records()
+        records[0]["measurement"]["plane"] = None
+        records[1]["capture"]["focus_mode"] = "manual"
+        records[2]["verdict"]["causes"] = ["camera shake"]
+        records[3]["verdict"].update(focus="on", defocus_um=0.1, defocus_um_low=-9, defocus_um_high=9)
+        found = self.lens(self.lines(records)).records[-1]
+        self.assertEqual(found["left_out"], {"manual focus": 1, "motion": 1, "no plane": 1})
+        self.assertEqual(found["used"], 9)
+
+    def test_asks_for_what_no_file_records(self):
+        records = self.records()
+        for record in records:
+            record["capture"]["f_number"] = None
+        result = self.lens(self.lines(records))
+        self.assertEqual(result.code, WRONG_USE)
+        self.assertIn("--f-number", result.err)
+
+    def test_a_bad_line_is_said_and_the_others_count(self):
+        result = self.lens(self.stored + "{nonsense\n" + '{"schema": "focusfall.other/1"}\n')
+        self.assertEqual(result.code, FRAMES_MISSING)
+        self.assertIn("records.jsonl, line 13:", result.err)
+        self.assertIn("records.jsonl, line 14:", result.err)
+        self.assertEqual(result.records[-1]["used"], 12)
+
+    def test_bad_options(self):
+        for option, value in (("--approach", "left"), ("--series", "odd"), ("--near-side", "middle")):
+            self.assertEqual(self.lens(self.stored, option, value).code, WRONG_USE)
+        self.assertEqual(self.lens(self.stored, "--near-side", "top").code, WRONG_USE)   # records hold it already
+
+    def test_a_thousand_records_take_less_than_a_second(self):
+        bench, records = self.records(), []
+        for number in range(1000):
+            record = json.loads(json.dumps(bench[number % 12]))
+            record["measurement"]["plane"]["at_contact_px"] += 1e-4 * number   # no two frames measure the same
+            record["capture"]["taken_at"] = f"2026-06-16T{10 + number // 360}:{number // 6 % 60:02}:{number % 6}0"
+            records.append(record)
+        path = str(self.write("records.jsonl", self.lines(records).encode()))
+        start = time.perf_counter()
+        result = run("lens", "--format", "json", path)
+        elapsed_s = time.perf_counter() - start
+        self.assertEqual(result.records[-1]["used"], 1000)
+        print(f"1,000 records: {elapsed_s:.2f} s")
+        self.assertLess(elapsed_s, 1)
+
+
+if __name__ == "__main__":
+    unittest.main()
