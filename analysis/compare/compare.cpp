@@ -17,7 +17,7 @@ constexpr double k95 = 1.959964;
 // A side is called where the signed blur stands out, the slope too, and the aim is as blurred as the surface at the
 // contact. Measured on rendered frames without a wrong side.
 constexpr double kSideSignificance = 2.5;
-constexpr double kSideFloorPx = 0.15;          // no plane fit is truer than that, whatever its residuals say
+constexpr double kSideFloorPx = 0.08;          // no plane fit is truer than that, whatever its residuals say
 constexpr double kSlopeSignificance = 3;
 constexpr double kBlurAgreement = 2;           // standard deviations between |l| and the blur at the aim
 constexpr double kBaselineOfPlanePx2 = 1;      // uncertainty of the blur left on the line of best focus
@@ -95,7 +95,7 @@ bool inside(const Interval& squared_disc_px2, double limit_px) {
 }
 
 // +1 = focus fell behind, -1 = in front, 0 = the plane does not tell.
-int side(const std::optional<PlaneReading>& plane, const AimBlur& blur) {
+int side(const std::optional<PlaneReading>& plane, const FractionBox& aim, const AimBlur& blur) {
   if (!plane || plane->contact == Contact::none || !plane->at_contact_px || blur.bound == Bound::lower) return 0;
   const double l = plane->at_contact_px->value, sigma = plane->at_contact_sigma_px;
   if (!(std::abs(l) > kSideSignificance * std::hypot(sigma, kSideFloorPx))) return 0;
@@ -104,11 +104,12 @@ int side(const std::optional<PlaneReading>& plane, const AimBlur& blur) {
 
   // |l| is what is left of the aim's blur without the blur on the line of best focus; the baseline cancels. Where it
   // is small its error is that of S itself.
+  const double expected_px = expected_disc_px(*plane, aim);
   const double excess_px2 = std::max(blur.isotropic_raw_px2 - plane->residual_squared_disc_px2, 0.0);
   const double disc_px = std::sqrt(excess_px2);
   const double excess_sigma_px2 = std::hypot(blur.isotropic_sigma_px2, kBaselineOfPlanePx2);
   const double disc_sigma_px = excess_sigma_px2 / (2 * std::max(disc_px, std::sqrt(excess_sigma_px2) / 2));
-  if (!(std::abs(std::abs(l) - disc_px) < kBlurAgreement * std::hypot(sigma, disc_sigma_px))) return 0;
+  if (!(std::abs(expected_px - disc_px) < kBlurAgreement * std::hypot(sigma, disc_sigma_px))) return 0;
   return l > 0 ? 1 : -1;
 }
 
@@ -201,7 +202,7 @@ void judge_focus(const Measurement& measurement, const BaselinePosterior& baseli
   verdict.focus = FocusVerdict::off;
   if (defocused(blur, baseline.diffraction_px2(), limit_px)) {
     verdict.causes.push_back(Cause::defocus);
-    const int which = side(measurement.plane, blur);
+    const int which = side(measurement.plane, measurement.aim.box, blur);
     if (which != 0) verdict.focus = which > 0 ? FocusVerdict::back : FocusVerdict::front;
   }
   if (blur.moved) {

@@ -16,10 +16,15 @@ constexpr double kIndependence = 1.0 / 3;      // edges along one contour repeat
 constexpr double kOutlierShare = 0.15;
 constexpr double kOutlierRangePx2 = 400;       // an outlier may read anything up to 20 px
 constexpr double kDecisive = 3;                // difference of log likelihoods that decides (odds of 20)
+constexpr double kOppositeDecisive = 5;          // the same for feet on the other side of the line of best focus
+constexpr double kApartDecisive = 5;             // the same for "neither": tiles of one blur scatter more than edges do
 constexpr double kParameterCost = 2;           // per free parameter, nats: that is what chance gains
-constexpr double kTileScatter = 0.06, kTileScatterPx = 0.2;   // of c, between regions of one blur (measured)
+constexpr double kTileScatter = 0.10, kTileScatterPx = 0.25;   // of c, between regions of one blur (measured)
 constexpr double kMostDeviations = 2;
 constexpr double kMostHolePx = 64;             // or a quarter of the height of the aim
+constexpr double kLeastInliersFoot = 0.85;     // texture that is misread fits worse than this, and misplaces the feet
+constexpr double kLeastInliersAim = 0.75;
+constexpr double kWidestPx = 12;               // beyond, the surface is read too coarsely to compare a subject with it
 constexpr int kRows = 64;                      // places tried for the foot
 constexpr int kLeastAimPoints = 6;
 constexpr int kLeastGroundPoints = 4;          // below the foot
@@ -81,6 +86,8 @@ class Finder {
     return l * l + fit_.field.floor_px2;
   }
 
+  double signed_row(double v) const { return signed_disc(fit_.field, axes_.x(u_, v), axes_.y(u_, v)); }
+
   // The rows that inlier tiles cover.
   void reach() {
     first_ = std::numeric_limits<double>::infinity();
@@ -123,12 +130,25 @@ class Finder {
     std::sort(column_.begin(), column_.end(), [](const ColumnPoint& a, const ColumnPoint& b) { return a.v < b.v; });
   }
 
-  // Log likelihood of "one blur down to the row v, the surface below".
+  // Log likelihood of "one blur down to the row v, the surface below". Beneath the aim the surface shows beside the
+  // subject's legs and between them.
   double standing(double v, double blur_px2) const {
     double sum = 0;
-    for (const ColumnPoint& p : column_)
-      sum += p.v < v ? log_density(p.squared_disc_px2, blur_px2) : p.plane_log_density;
+    for (const ColumnPoint& p : column_) {
+      if (p.v >= v) {
+        sum += p.plane_log_density;
+      } else {
+        const double own = log_density(p.squared_disc_px2, blur_px2);
+        sum += p.v <= bottom_ ? own : either(own, p.plane_log_density);
+      }
+    }
     return sum;
+  }
+
+  // Both explanations of a point, equally likely beforehand; each log density is that of a share of one edge.
+  static double either(double a, double b) {
+    const double larger = std::max(a, b), smaller = std::min(a, b);
+    return larger + kIndependence * std::log(0.5 * (1 + std::exp((smaller - larger) / kIndependence)));
   }
 
   // The same with the blur of the surface at that row, give or take what tiles of one blur scatter.
@@ -175,7 +195,7 @@ class Finder {
 
     // The aim on the surface: only where the surface reaches that far.
     double on_surface = none;
-    if (middle >= first_) {
+    if (middle >= first_ && fit_.inlier_fraction >= kLeastInliersAim && std::abs(signed_row(middle)) <= kWidestPx) {
       on_surface = 0;
       for (const ColumnPoint& p : column_) on_surface += p.plane_log_density;
     }
@@ -183,17 +203,27 @@ class Finder {
     // The feet at every row from the aim's middle to the nearest inlier tile; and a blur of its own likewise.
     std::vector<double> rows, likelihoods;
     double foot = none, apart = none, foot_v = middle;
+    const bool foot_can_be_told = fit_.inlier_fraction >= kLeastInliersFoot;
     for (int i = 0; i <= kRows; ++i) {
       const double v = middle + (last_ - middle) * i / kRows;
       const double blur_px2 = median_above(v);
       apart = std::max(apart, standing(v, blur_px2) - 2 * kParameterCost);
+      if (!foot_can_be_told || std::abs(signed_row(v)) > kWidestPx) continue;
       if (points_below(v) < kLeastGroundPoints || v < first_ || hole_above(v, blur_px2)) continue;
       const double likelihood = standing_on_surface(v, blur_px2) - kParameterCost;
       rows.push_back(v);
       likelihoods.push_back(likelihood);
       if (likelihood > foot) foot = likelihood, foot_v = v;
     }
-    if (apart > std::max(on_surface, foot) + kDecisive) return {};
+    if (apart > std::max(on_surface, foot) + kApartDecisive) return {};
+
+    // A row on the other side of the line of best focus has the same blur; if the feet might as well stand there, the
+    // side is open.
+    if (foot > on_surface) {
+      const double l_best = signed_row(foot_v);
+      for (size_t i = 0; i < rows.size(); ++i)
+        if (signed_row(rows[i]) * l_best < 0 && likelihoods[i] > foot - kOppositeDecisive) return {};
+    }
 
     // How far the row of the feet may lie from the best one.
     double low = foot_v, high = foot_v;

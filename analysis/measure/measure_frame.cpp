@@ -23,6 +23,8 @@ constexpr int kLeastAimEdges = 12;        // below, the aim has no evidence (mea
 constexpr double kWidestInRegion = 0.2;   // c / side of the region: wider, soft shading passes for a blurred edge
 constexpr double kWidestInTile = 0.33;     // the same of a tile of the map, which has edges alone and is only looked at
 constexpr int kLeastBestEdges = 8;        // a tile with fewer is not taken for the sharpest; it is measured again then
+constexpr int kTextureSquares = 100;       // looked at for fine texture, spread over the frame
+constexpr double kTextureGap = 1.0;        // standard deviations by which the spectrum reads more than the edges there
 constexpr int kBestRegionPx = 192;        // side of the sharpest region: the least that an aim has
 constexpr double kBackgroundClear = 0.25; // of the aim's size left out around it when the background is measured
 constexpr int kWideFrame_px = 4000;       // from here on tiles are 128 px a side, else 64: about 25 to 60 columns
@@ -57,6 +59,25 @@ PixelRect square_about(double x, double y, int side, cv::Size size) {
           std::clamp(static_cast<int>(y) - h / 2, 0, size.height - h), w, h};
 }
 
+int aim_edges_per_block(PixelRect region) {
+  const double blocks = static_cast<double>(region.width) * region.height / (kBlock_px * kBlock_px);
+  return std::clamp(static_cast<int>(kAimEdges / std::max(blocks, 1.0)), 1, kAimEdgesPerBlock);
+}
+
+// The aim and everything between it and the near side of the picture, or twice its own extent on every side where that
+// side is not known.
+PixelRect strip_below(PixelRect aim, cv::Size size, const MeasureRequest& request) {
+  int x0 = aim.x, y0 = aim.y, x1 = aim.x + aim.width, y1 = aim.y + aim.height;
+  if (!request.near_side_known) return {x0, y0, aim.width, std::min(size.height - y0, 3 * aim.height)};
+  switch (request.near_side) {
+    case NearSide::bottom: y1 = size.height; break;
+    case NearSide::top: y0 = 0; break;
+    case NearSide::left: x0 = 0; break;
+    case NearSide::right: x1 = size.width; break;
+  }
+  return {x0, y0, x1 - x0, y1 - y0};
+}
+
 int tile_side_px(cv::Size size) {
   return std::max(size.width, size.height) >= kWideFrame_px ? 128 : 64;
 }
@@ -70,6 +91,7 @@ struct FrameMeasurer::Buffers {
   cv::Mat linear;
   FrameEdges frame;
   std::vector<EdgeSample> aim_edges, some;
+  std::vector<BlurSample> texture_samples;
   double noise = 0;
 
   void measure_aim(PixelRect aim, Measurement& out);
@@ -77,6 +99,7 @@ struct FrameMeasurer::Buffers {
   std::optional<SharpestRegion> sharpest(const TileMap& tiles, cv::Size size);
   void measure_background(PixelRect aim, Measurement& out);
   std::optional<PlaneReading> measure_plane(const MeasureRequest& request, cv::Size size);
+  void sample_textures(cv::Size size);
   BlurReading reading(PixelRect region, const std::vector<EdgeSample>& edges);
 };
 
@@ -101,9 +124,7 @@ BlurReading FrameMeasurer::Buffers::reading(PixelRect region, const std::vector<
 // The aim: its edges on all levels, split if it holds two blurs, fused with its spectrum; and its motion.
 void FrameMeasurer::Buffers::measure_aim(PixelRect aim, Measurement& out) {
   aim_edges.clear();
-  const double blocks = static_cast<double>(aim.width) * aim.height / (kBlock_px * kBlock_px);
-  const int per_block = std::clamp(static_cast<int>(kAimEdges / std::max(blocks, 1.0)), 1, kAimEdgesPerBlock);
-  find_edges(pyramid, aim, noise, {.edges_per_block = per_block}, search, aim_edges);
+  find_edges(pyramid, aim, noise, {.edges_per_block = aim_edges_per_block(aim)}, search, aim_edges);
   const std::vector<EdgeSample> sharper = sharper_group(aim_edges, aim);
   out.aim.mixed = !sharper.empty();
   if (out.aim.mixed) {
@@ -180,7 +201,50 @@ std::optional<PlaneReading> FrameMeasurer::Buffers::measure_plane(const MeasureR
   options.aim = request.aim.box;
   options.contact_x = request.contact_x;
   options.contact_y = request.contact_y;
-  return plane(frame.edges, options);
+
+  // Where the subject meets the surface is seen in the strip below the aim: its edges are searched as densely as the
+  // aim's own.
+  const PixelRect strip = strip_below(pixel_rect(request.aim.box, size), size, request);
+  some.clear();
+  std::copy_if(frame.edges.begin(), frame.edges.end(), std::back_inserter(some),
+               [&](const EdgeSample& edge) { return !inside(edge, strip); });
+  find_edges(pyramid, strip, noise, {.edges_per_block = aim_edges_per_block(strip)}, search, some);
+  sample_textures(size);
+  return plane(some, options, texture_samples);
+}
+
+// Fine texture crowds its own edges, which then read too little; its spectrum does not mind. Where the two disagree in
+// that sense the spectrum takes the place of the edges in `some`.
+void FrameMeasurer::Buffers::sample_textures(cv::Size size) {
+  constexpr int kSide = SpectralEstimator::kTile;
+  texture_samples.clear();
+  const int columns = size.width / kSide, rows = size.height / kSide;
+  if (columns == 0 || rows == 0) return;
+  const double stride = std::max(std::sqrt(static_cast<double>(columns) * rows / kTextureSquares), 1.0);
+  std::vector<PixelRect> taken;
+  std::vector<EdgeSample> here;
+  for (double y = 0; y < rows; y += stride) {
+    for (double x = 0; x < columns; x += stride) {
+      const PixelRect square{static_cast<int>(x) * kSide, static_cast<int>(y) * kSide, kSide, kSide};
+      here.clear();
+      std::copy_if(some.begin(), some.end(), std::back_inserter(here),
+                   [&](const EdgeSample& edge) { return inside(edge, square); });
+      if (here.empty()) continue;   // nothing to see, or far too blurred
+      const auto spectrum = region_spectrum(pyramid, square, spectral, linear);
+      if (!spectrum) continue;
+      const auto blur = edge_blur(here);
+      if (blur && spectrum->disc_px < blur_disc_px(blur->squared_disc_px2) + kTextureGap * std::hypot(blur->sigma_px, spectrum->sigma_px)) {
+        continue;
+      }
+      taken.push_back(square);
+      texture_samples.push_back({static_cast<float>(square.x + kSide / 2), static_cast<float>(square.y + kSide / 2), kSide,
+                                 static_cast<float>(spectrum->disc_px * spectrum->disc_px),
+                                 static_cast<float>(spectrum->sigma_px)});
+    }
+  }
+  std::erase_if(some, [&](const EdgeSample& edge) {
+    return std::any_of(taken.begin(), taken.end(), [&](const PixelRect& square) { return inside(edge, square); });
+  });
 }
 
 Measurement FrameMeasurer::measure(const LumaPicture& picture, const MeasureRequest& request) {

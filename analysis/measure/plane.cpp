@@ -23,7 +23,8 @@ constexpr int kLeastClusters = 12;
 // A surface shows a change of blur: a field that hardly changes explains any frame of one blur. Judgement.
 constexpr double kLeastSpanPx = 2;
 constexpr double kLeastSpan = 0.4;           // of the largest signed blur on it
-constexpr double kFloorSigmaPx = 0.05;       // no signed blur is known better: tables and tone curve
+constexpr double kRelativeSigma = 0.06;       // of the signed blur: textures that read a little less, all alike
+constexpr double kFloorSigmaPx = 0.1;        // no signed blur is known better: tables and tone curve
 
 struct Candidate {
   Fit fit;
@@ -97,7 +98,7 @@ void set_contact(const Scene& scene, const Candidate& candidate, const PlaneOpti
   reading.contact_x = found.x;
   reading.contact_y = found.y;
   const SignedBlur l = signed_blur(reading, found.x, found.y);
-  const double sigma = std::hypot(l.sigma_px, found.extra_sigma_px, kFloorSigmaPx);
+  const double sigma = std::hypot(std::hypot(l.sigma_px, found.extra_sigma_px), kFloorSigmaPx, kRelativeSigma * l.value_px);
   reading.at_contact_sigma_px = sigma;
   reading.at_contact_px = Interval{l.value_px, l.value_px - k95 * sigma, l.value_px + k95 * sigma};
 }
@@ -111,6 +112,19 @@ SignedBlur signed_blur(const PlaneReading& reading, double x, double y) {
     for (int j = 0; j < 3; ++j) variance += row[i] * reading.covariance[i][j] * row[j];
   return {reading.x_gradient_px * x + reading.y_gradient_px * y + reading.offset_px,
           std::sqrt(std::max(variance, 0.0))};
+}
+
+double expected_disc_px(const PlaneReading& reading, const FractionBox& aim) {
+  if (reading.contact != Contact::aim) return std::abs(signed_blur(reading, reading.contact_x, reading.contact_y).value_px);
+  constexpr int kAcross = 9;   // an odd number of places each way
+  std::vector<double> discs;
+  for (int i = 0; i < kAcross * kAcross; ++i) {
+    const double x = aim.x + aim.width * (i % kAcross + 0.5) / kAcross, y = aim.y + aim.height * (i / kAcross + 0.5) / kAcross;
+    discs.push_back(std::abs(signed_blur(reading, x, y).value_px));
+  }
+  const auto middle = discs.begin() + std::ptrdiff_t(discs.size() / 2);
+  std::nth_element(discs.begin(), middle, discs.end());
+  return *middle;
 }
 
 std::optional<PlaneReading> plane(std::span<const EdgeSample> edges, const PlaneOptions& options,

@@ -51,4 +51,8 @@ struct SignedBlur {
 };
 SignedBlur signed_blur(const PlaneReading& reading, double x, double y);
 
+// Disc that a region would show if it were blurred as the reading says, the blur on the line of best focus left out:
+// |l| at the feet of a subject, the median of |l| over an aim that lies on the surface itself. px.
+double expected_disc_px(const PlaneReading& reading, const FractionBox& aim);
+
 }  // namespace focusfall

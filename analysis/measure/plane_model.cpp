@@ -16,6 +16,7 @@ constexpr int kLeastEdgesInGate = 4;         // fewer do not open a level
 constexpr double kWidestSigmaLevelPx = 2.5;  // as in a region (edge_group.cpp)
 constexpr double kSharpVarianceLevelPx2 = 0.33;
 constexpr double kResidualScale = 0.03;
+constexpr double kSampleWeight = 6;           // of a sample from a whole square, beside single edges
 constexpr int kClusterPx = 32;
 constexpr int kDependencePx = 128;           // edges farther apart count as independent
 constexpr int kMostClusters = 700;           // the search needs no more
@@ -179,7 +180,7 @@ Scene scene_of(std::span<const EdgeSample> edges, std::span<const BlurSample> sa
   };
   for (const EdgeSample& edge : on_the_right_level(edges, options))
     add(edge.x, edge.y, edge.squared_disc_px2, quality(edge));
-  for (const BlurSample& sample : samples) add(sample.x, sample.y, sample.squared_disc_px2, 1);
+  for (const BlurSample& sample : samples) add(sample.x, sample.y, sample.squared_disc_px2, kSampleWeight);
   scene.clusters = clusters_of(scene.points, scene.scale_px);
   return scene;
 }

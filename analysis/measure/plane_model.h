@@ -14,7 +14,7 @@ namespace focusfall::plane_fit {
 struct Point {
   double x = 0, y = 0;
   double squared_disc_px2 = 0;
-  double weight = 1;           // 0..1, quality of the fit
+  double weight = 1;           // 0..1, quality of the fit; more for what stands for a whole square
   int cluster = 0;             // spatial neighbours share one: they are not independent
 };
 

@@ -13,9 +13,9 @@ namespace {
 constexpr double kCuts[] = {6, 4, 3};
 constexpr double kTukeyPerCut = 1.6;         // Tukey's c for a cut: 4.685 at 3 sigma gives 95 % efficiency
 constexpr int kStepsPerCut = 8;
-constexpr double kFloorSigmaPx2 = 3;         // prior of the blur on the line: an unknown baseline
+constexpr double kFloorSigmaPx2 = 2;         // prior of the blur on the line: an unknown baseline
 constexpr double kTrustRegionPx = 4;         // largest change of l in one step anywhere in the frame
-constexpr double kLastDiscPx = 14;           // the last rounds use less blurred edges only: wide discs are under-read
+constexpr double kLastDiscPx = 10;           // the last rounds use less blurred edges only: wide discs are under-read
 constexpr int kLeastPoints = 24;
 constexpr double kCovarianceScale = 1.5;     // of variances, for what the model leaves out; measured
 

@@ -71,9 +71,7 @@ double posterior_quantile(const std::vector<double>& values, const std::vector<d
 
 }  // namespace
 
-void SpectralEstimator::prepare(double system_variance_px2) {
-  if (prepared_for_ == system_variance_px2) return;
-  prepared_for_ = system_variance_px2;
+void SpectralEstimator::prepare_rings() {
   if (rings_.empty()) {
     for (double f = kLowestFrequency; f * kRingRatio <= kHighestFrequency * 1.0001; f *= kRingRatio) {
       rings_.push_back({0, 0, f, f * kRingRatio});
@@ -95,8 +93,15 @@ void SpectralEstimator::prepare(double system_variance_px2) {
     for (double c = kFirstDisc; c < kLastDisc; c *= kDiscRatio) discs_.push_back(c);
     cv::createHanningWindow(window_, cv::Size(kT, kT), CV_32F);
   }
+}
+
+const SpectralEstimator::LogResponse& SpectralEstimator::prepared(double system_variance_px2) {
+  for (const auto& [variance, response] : log_responses_) {
+    if (variance == system_variance_px2) return response;
+  }
+  prepare_rings();
   // |disc|^2 over each ring, weighted f^-3 (bins times a typical power law) and spread by the window's kernel.
-  log_response_.assign(discs_.size(), std::vector<double>(rings_.size()));
+  LogResponse made(discs_.size(), std::vector<double>(rings_.size()));
   constexpr int kSamples = 16;
   for (std::size_t d = 0; d < discs_.size(); ++d) {
     for (std::size_t r = 0; r < rings_.size(); ++r) {
@@ -112,9 +117,10 @@ void SpectralEstimator::prepare(double system_variance_px2) {
         sum += w * spread * std::exp(-4 * M_PI * M_PI * system_variance_px2 * f * f);
         total += w;
       }
-      log_response_[d][r] = std::log(sum / total);
+      made[d][r] = std::log(sum / total);
     }
   }
+  return log_responses_.emplace_back(system_variance_px2, std::move(made)).second;
 }
 
 std::vector<double> SpectralEstimator::ring_energies(const cv::Mat& linear, int& tiles) {
@@ -148,7 +154,7 @@ std::vector<double> SpectralEstimator::ring_energies(const cv::Mat& linear, int&
 
 std::optional<SpectralBlur> SpectralEstimator::measure(const cv::Mat& linear, double system_variance_px2) {
   if (linear.cols < kT || linear.rows < kT) return std::nullopt;
-  prepare(system_variance_px2);
+  const LogResponse& log_response = prepared(system_variance_px2);
   int tiles = 0;
   const std::vector<double> energy = ring_energies(linear, tiles);
 
@@ -167,7 +173,7 @@ std::optional<SpectralBlur> SpectralEstimator::measure(const cv::Mat& linear, do
   }
   std::vector<double> chi2(discs_.size());
   for (std::size_t d = 0; d < discs_.size(); ++d) {
-    for (std::size_t r = 0; r < kept; ++r) y[r] = std::log(energy[r] - floor) - log_response_[d][r];
+    for (std::size_t r = 0; r < kept; ++r) y[r] = std::log(energy[r] - floor) - log_response[d][r];
     chi2[d] = fit_power_law(y, log_f, weight).chi2;
   }
   const double best = *std::min_element(chi2.begin(), chi2.end());

@@ -7,6 +7,7 @@
 
 #include <opencv2/core.hpp>
 #include <optional>
+#include <utility>
 #include <vector>
 
 namespace focusfall {
@@ -35,14 +36,15 @@ class SpectralEstimator {
     double bins = 0;             // independent samples in it, one tile
     double low = 0, high = 0;    // cycles/px
   };
-  void prepare(double system_variance_px2);
+  using LogResponse = std::vector<std::vector<double>>;   // [disc][ring]
+  void prepare_rings();
+  const LogResponse& prepared(double system_variance_px2);
   std::vector<double> ring_energies(const cv::Mat& linear, int& tiles);
 
-  double prepared_for_ = -1;
   std::vector<Ring> rings_;
   std::vector<int> ring_of_bin_;           // per bin of the half spectrum, -1 outside
   std::vector<double> discs_;              // the grid of c
-  std::vector<std::vector<double>> log_response_;   // [disc][ring]
+  std::vector<std::pair<double, LogResponse>> log_responses_;   // for every system variance that was asked for
   cv::Mat window_, tile_, spectrum_;
 };
 

@@ -4,6 +4,7 @@
 #include <fmt/format.h>
 #include <map>
 
+#include "analysis/measure/plane.h"
 #include "tests/accuracy/scenes.h"
 #include "tests/accuracy/scoring.h"
 
@@ -11,7 +12,9 @@ namespace focusfall::accuracy {
 namespace {
 
 // A side is called as measurement.md's cause rule does: |l| > 2.5 sqrt(sigma^2 + .15^2) and the slope stands out.
-constexpr double kCallSigmas = 2.5, kCallFloorPx = 0.15, kSlopeSigmas = 3;
+// and the aim is as blurred as the ground at the contact, | |l| - c | < 2 sigma.
+constexpr double kCallSigmas = 2.5, kCallFloorPx = 0.08, kSlopeSigmas = 3, kAgreeSigmas = 2;
+constexpr double kBaselineOfPlanePx2 = 1;  // what the line of best focus leaves open
 
 struct Reading {
   bool fitted = false, at_contact = false, called = false, wrong = false, covered = false;
@@ -22,6 +25,15 @@ struct Case {
   SceneSpec spec;
   std::string group;
 };
+
+bool agrees(const Measurement& m, double sigma_px) {
+  if (!m.aim_blur.estimate || m.aim_blur.estimate->bound != Bound::none) return false;
+  const BlurEstimate& aim = *m.aim_blur.estimate;
+  const double excess = std::max(aim.squared_disc_px2 - m.plane->residual_squared_disc_px2, 0.0), disc = std::sqrt(excess);
+  const double sigma_square = std::hypot((aim.squared_disc_high_px2 - aim.squared_disc_low_px2) / 4, kBaselineOfPlanePx2);
+  const double sigma_disc = sigma_square / (2 * std::max(disc, std::sqrt(sigma_square) / 2));
+  return std::abs(expected_disc_px(*m.plane, m.aim.box) - disc) < kAgreeSigmas * std::hypot(sigma_px, sigma_disc);
+}
 
 Reading measure(const SceneSpec& spec, FrameMeasurer& measurer) {
   const Scene scene = make_scene(spec);
@@ -36,7 +48,7 @@ Reading measure(const SceneSpec& spec, FrameMeasurer& measurer) {
   if (m.plane->contact == Contact::none || !m.plane->at_contact_px) return r;
   r.at_contact = true;
   const double l = m.plane->at_contact_px->value, sigma = m.plane->at_contact_sigma_px;
-  r.called = std::abs(l) > kCallSigmas * std::hypot(sigma, kCallFloorPx) && slope * kSceneHeight > kSlopeSigmas * m.plane->gradient_sigma_px;
+  r.called = std::abs(l) > kCallSigmas * std::hypot(sigma, kCallFloorPx) && slope * kSceneHeight > kSlopeSigmas * m.plane->gradient_sigma_px && agrees(m, sigma);
   // Truth where the program says that the subject meets the ground; without a ground any call is wrong.
   const double there = spec.ground ? spec.contact_disc : 0;
   r.wrong = r.called && (!spec.ground || l * there <= 0);

