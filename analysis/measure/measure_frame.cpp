@@ -23,7 +23,8 @@ constexpr int kLeastAimEdges = 12;        // below, the aim has no evidence (mea
 constexpr double kWidestInRegion = 0.2;   // c / side of the region: wider, soft shading passes for a blurred edge
 constexpr double kWidestInTile = 0.33;     // the same of a tile of the map, which has edges alone and is only looked at
 constexpr int kLeastBestEdges = 8;        // a tile with fewer is not taken for the sharpest; it is measured again then
-constexpr int kTextureSquares = 100;       // looked at for fine texture, spread over the frame
+constexpr int kTextureSquares = 60;        // looked at for fine texture, spread over the frame
+constexpr double kLeastTexture_px = 2.5;   // read by edges: fine texture of 4 px and more reads at least that
 constexpr double kTextureGap = 1.0;        // standard deviations by which the spectrum reads more than the edges there
 constexpr int kBestRegionPx = 192;        // side of the sharpest region: the least that an aim has
 constexpr double kBackgroundClear = 0.25; // of the aim's size left out around it when the background is measured
@@ -230,9 +231,10 @@ void FrameMeasurer::Buffers::sample_textures(cv::Size size) {
       std::copy_if(some.begin(), some.end(), std::back_inserter(here),
                    [&](const EdgeSample& edge) { return inside(edge, square); });
       if (here.empty()) continue;   // nothing to see, or far too blurred
+      const auto blur = edge_blur(here);
+      if (blur && blur_disc_px(blur->squared_disc_px2) < kLeastTexture_px) continue;   // the spectrum tells from 4 px on
       const auto spectrum = region_spectrum(pyramid, square, spectral, linear);
       if (!spectrum) continue;
-      const auto blur = edge_blur(here);
       if (blur && spectrum->disc_px < blur_disc_px(blur->squared_disc_px2) + kTextureGap * std::hypot(blur->sigma_px, spectrum->sigma_px)) {
         continue;
       }

@@ -14,7 +14,7 @@ namespace {
 constexpr int kSamples = 2500;               // pairs and triples drawn
 constexpr int kProbe = 120;                  // clusters on which every field is tried
 constexpr int kSurvivors = 80;               // tried on all of them
-constexpr int kKept = 12;                    // candidates for refinement
+constexpr int kKept = 6;                     // candidates for refinement
 constexpr double kLeastSlope = 0.0012, kMostSlope = 0.25;   // px per px: 85 mm at 30 m to a long lens near the ground
 constexpr double kDistinctPx = 1.5;          // fields that differ by less anywhere in the frame are one
 
