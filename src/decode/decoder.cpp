@@ -13,7 +13,7 @@ namespace focusfall {
 namespace {
 
 // Asked in this order; the first that recognises the file has it.
-constexpr std::array kCodecs = {&kJpegCodec};
+constexpr std::array kCodecs = {&kJpegCodec, &kPngCodec, &kTiffCodec};
 
 std::string expected_kinds() {
   std::string kinds;

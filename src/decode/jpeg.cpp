@@ -5,7 +5,11 @@
 #include <jerror.h>
 
 #include <algorithm>
+#include <cstdlib>
+#include <memory>
 #include <utility>
+
+#include "src/decode/icc.h"
 
 namespace focusfall {
 namespace {
@@ -94,6 +98,7 @@ JpegDecoder::JpegDecoder() : handler_(std::make_unique<Handler>()) {
   codec_.client_data = handler_.get();
   jpeg_create_decompress(&codec_);
   codec_.progress = &handler_->progress;
+  jpeg_save_markers(&codec_, JPEG_APP0 + 2, 0xFFFF);   // where a colour profile lies (ICC.1:2022, annex B.4)
 }
 
 JpegDecoder::~JpegDecoder() { jpeg_destroy_decompress(&codec_); }
@@ -188,13 +193,29 @@ Decoded<PictureFormat> JpegDecoder::open(std::span<const std::byte> file) {
         fmt::format("a JPEG of {} channels ({}); expected grey, YCbCr or RGB", codec_.num_components,
                     codec_.num_components == 4 ? "CMYK, for printing" : "of unknown meaning")});
   }
-  return PictureFormat{.width_px = static_cast<int>(codec_.image_width),
+  PictureFormat format{.width_px = static_cast<int>(codec_.image_width),
                        .height_px = static_cast<int>(codec_.image_height),
                        .bits = 8,
                        .channels = codec_.jpeg_color_space == JCS_GRAYSCALE ? 1 : 3,
                        .kind = "JPEG",
                        .remarks = handler_->remarks,
                        .coding_step_codes = coding_step()};
+  read_profile(format);
+  return format;
+}
+
+// The profile may be spread over several APP2 markers; libjpeg puts them together.
+void JpegDecoder::read_profile(PictureFormat& format) {
+  JOCTET* bytes = nullptr;
+  unsigned length = 0;
+  const int remarks_before = handler_->remarks;
+  if (!guarded([&] { jpeg_read_icc_profile(&codec_, &bytes, &length); })) return;
+  const std::unique_ptr<JOCTET, decltype(&std::free)> owned(bytes, &std::free);
+  if (bytes != nullptr) {
+    apply_profile({reinterpret_cast<const std::byte*>(bytes), length}, format);
+  } else if (handler_->remarks > remarks_before) {
+    format.notes.push_back({"profile-unusable", "parts of the colour profile are missing; sRGB was assumed"});
+  }
 }
 
 Decoded<PictureFormat> JpegDecoder::format(std::span<const std::byte> file) { return open(file); }

@@ -32,6 +32,7 @@ class JpegDecoder {
   template <class Step>
   bool guarded(Step step);
   Decoded<PictureFormat> open(std::span<const std::byte> file);
+  void read_profile(PictureFormat& format);
   bool planes_are_simple() const;
   bool scans_are_complete() const;
   std::optional<DecodeError> deliver_planes(StripSink& sink);
