@@ -51,5 +51,6 @@ std::vector<Figure> run_predictions(const SetOptions& options);
 std::vector<Figure> run_motion(const SetOptions& options);
 std::vector<Figure> run_planes(const SetOptions& options);
 std::vector<Figure> run_causes(const SetOptions& options);
+std::vector<Figure> run_exposure(const SetOptions& options);
 
 }  // namespace focusfall::accuracy
