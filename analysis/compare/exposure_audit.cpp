@@ -251,9 +251,22 @@ void apply_set(const ExposureSet& set, std::vector<FrameExposure>& results) {
   }
 }
 
+// Stops of exposure that lie between a decoded level and clipping: the shape of the set's curve and its contrast.
+double exposure_of_level_ev(const ExposureSet& set, const SetLevels& levels, double level_ev) {
+  return levels.relative.shape.exposure_ev(level_ev) / (set.audit ? set.audit->contrast : 1);
+}
+
+// Room in stops of the picture becomes room in stops of exposure.
+void rescale_room(const ExposureSet& set, const SetLevels& levels, std::vector<FrameExposure>& results) {
+  for (const std::size_t frame : set.frames) {
+    if (auto& room_ev = results[frame].room_ev) room_ev = -exposure_of_level_ev(set, levels, -*room_ev);
+  }
+}
+
 // A darker frame of the set that shows the highlights whole says how far above clipping they went in this one.
 void pull_back_by_siblings(std::span<const ExposureFrame> frames, const FrameGroup& group, const SetLevels& levels,
-                           double clip_limit, std::vector<FrameExposure>& results) {
+                           double clip_limit, const ExposureSet& set, std::vector<FrameExposure>& results) {
+  const double contrast = set.audit ? set.audit->contrast : 1;
   for (std::size_t m = 0; m < levels.members.size(); ++m) {
     FrameExposure& result = results[group.frames[levels.members[m]].frame];
     const auto& own = levels.relative.frames[m];
@@ -265,7 +278,7 @@ void pull_back_by_siblings(std::span<const ExposureFrame> frames, const FrameGro
       if (s == m || !other || !sibling.highlights || other->level_ev >= own->level_ev) continue;
       const auto level_ev = highlight_level_ev(sibling.highlights->frame_share_above, clip_limit);
       if (!level_ev || (nearest_level && other->level_ev <= *nearest_level)) continue;
-      const double pull_back = own->level_ev - other->level_ev + levels.relative.shape.exposure_ev(*level_ev);
+      const double pull_back = (own->level_ev - other->level_ev) / contrast + exposure_of_level_ev(set, levels, *level_ev);
       nearest_level = other->level_ev;
       result.pull_back = PullBack{std::max(0.0, pull_back), Bound::none};
     }
@@ -337,7 +350,8 @@ ExposureAudit audit_exposure(std::span<const ExposureFrame> frames, const Exposu
     }
     test_set(frames, group, levels, options.same_light, set);
     apply_set(set, audit.frames);
-    pull_back_by_siblings(frames, group, levels, options.clip_limit, audit.frames);
+    rescale_room(set, levels, audit.frames);
+    pull_back_by_siblings(frames, group, levels, options.clip_limit, set, audit.frames);
     set.vignetting = vignetting_of(frames, group, levels);
     set.brackets = find_brackets(frames, set);
     audit.sets.push_back(std::move(set));

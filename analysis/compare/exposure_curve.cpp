@@ -11,7 +11,7 @@ namespace {
 
 // Bins of the curve, stops below clipping: half a stop at the shoulder, whole stops in the middle. Levels below eight
 // stops are not used (exposure_register.cpp).
-constexpr std::array kEdges = {0.0, -0.5, -1.0, -1.5, -2.0, -3.0, -4.0, -5.0, -6.0, -8.0};
+constexpr std::array kEdges = {0.0, -0.25, -0.5, -1.0, -1.5, -2.0, -2.5, -3.0, -3.5, -4.0, -5.0, -6.0, -8.0};
 constexpr std::size_t kBins = kEdges.size() - 1;
 
 constexpr int kLeastTilesInCommon = 6;       // judgement: for a level with an error from their scatter

@@ -252,6 +252,7 @@ class Audit {
     audit_.slope = Interval{slope, slope - half, slope + half};
     const bool is_one = slope - half <= 1 + kSlopeTolerance && slope + half >= 1 - kSlopeTolerance;
     if (options_.contrast_unknown || !is_one) slope_ = slope;
+    audit_.contrast = slope_;
     audit_.scatter_ev = fit.sigma_ev;
   }
 

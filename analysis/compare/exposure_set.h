@@ -52,6 +52,7 @@ struct SetFrameError {
 
 struct SetAudit {
   std::optional<Interval> slope;   // absent where the exposures span less than kLeastSpanEv
+  double contrast = 1;             // slope of the line that everything else is measured from: 1, or fitted (see options)
   double scatter_ev = 0;           // of a frame about the line, marks and light taken off
   std::vector<MarkError> diaphragm, shutter, iso;
   std::vector<LightChange> light_changes;
