@@ -129,7 +129,7 @@ struct SetLevels {
 
 SetLevels levels_of(std::span<const ExposureFrame> frames, const FrameGroup& group) {
   SetLevels levels;
-  Tiles central;
+  Tiles central, quantiles;
   for (std::size_t k = 0; k < group.frames.size(); ++k) {
     const GroupedFrame& g = group.frames[k];
     if (!g.match || !frames[g.frame].levels) continue;
@@ -137,11 +137,12 @@ SetLevels levels_of(std::span<const ExposureFrame> frames, const FrameGroup& gro
     levels.members.push_back(k);
     levels.all_tiles.push_back(registered_levels(grid, *g.match));
     central.push_back(levels.all_tiles.back());
+    quantiles.push_back(quantile_levels(frames[g.frame].highlights.value_or(Highlights{})));
     for (std::size_t i = 0; i < central.back().size(); ++i) {
       if (radius_of_tile(grid, i) > kCentralRadius) central.back()[i].reset();
     }
   }
-  if (!central.empty()) levels.relative = relative_levels(central);
+  if (!central.empty()) levels.relative = relative_levels(central, quantiles);
   return levels;
 }
 
@@ -193,19 +194,6 @@ std::vector<Vignetting> vignetting_of(std::span<const ExposureFrame> frames, con
   return result;
 }
 
-// A curve whose contrast was fitted is checked by halves: contrast from every second frame, slope of the others.
-std::optional<Interval> slope_by_halves(const std::vector<SetFrame>& tested) {
-  std::vector<SetFrame> halves[2];
-  for (std::size_t i = 0; i < tested.size(); ++i) halves[i % 2].push_back(tested[i]);
-  if (std::min(halves[0].size(), halves[1].size()) < kLeastSetFrames) return std::nullopt;
-  const auto first = audit_set(halves[0]).slope, second = audit_set(halves[1]).slope;
-  if (!first || !second || !(first->value > 0)) return std::nullopt;
-  const double ratio = second->value / first->value;
-  const double half = ratio * std::hypot((first->high - first->low) / (2 * first->value),
-                                         (second->high - second->low) / (2 * second->value));
-  return Interval{ratio, ratio - half, ratio + half};
-}
-
 void test_set(std::span<const ExposureFrame> frames, const FrameGroup& group, const SetLevels& levels, bool same_light,
               ExposureSet& set) {
   std::vector<SetFrame> tested;
@@ -235,7 +223,6 @@ void test_set(std::span<const ExposureFrame> frames, const FrameGroup& group, co
     return;
   }
   set.audit = audit_set(tested, {.contrast_unknown = set.curve_bent});
-  if (set.curve_bent) set.audit->slope = slope_by_halves(tested);
 }
 
 void apply_set(const ExposureSet& set, std::vector<FrameExposure>& results) {

@@ -6,6 +6,8 @@
 #include <cmath>
 #include <numeric>
 
+#include "analysis/compare/pull_back.h"
+
 namespace focusfall {
 namespace {
 
@@ -17,13 +19,18 @@ constexpr std::size_t kBins = kEdges.size() - 1;
 constexpr int kLeastTilesInCommon = 6;       // judgement: for a level with an error from their scatter
 // Tiles and frames that the curve is found from: what is beyond adds nothing but time.
 constexpr std::size_t kCurveTiles = 80, kCurveFrames = 60;
-constexpr double kSmoothness = 0.02;         // of neighbouring slopes, stops: judgement
+constexpr double kSmoothness = 0.05;         // weight of even slopes against a bin's share of the data: judgement
 constexpr double kHuber = 2;                 // standard deviations, then less weight
 // A bent curve is taken where it lowers the scatter of the tiles by this much and departs from the straight one by this
 // many stops somewhere. Judgement.
 constexpr double kBentScatter = 0.8, kBentEv = 0.05;
 
-using Tiles = std::vector<std::vector<std::optional<TileLevel>>>;
+using Tiles = TileLevels;
+
+// Shares of the pixels whose levels the curve is found from, an octave apart about.
+constexpr std::array kShares = {0.004, 0.008, 0.015, 0.03, 0.05, 0.08, 0.12, 0.17, 0.23, 0.3, 0.38, 0.46, 0.54};
+// Of such a level: the table's interpolation, and what vignetting and moving things leave (judgement), stops.
+constexpr double kQuantileSigmaEv = 0.03;
 
 double median(std::vector<double> values) {
   const auto middle = values.begin() + static_cast<std::ptrdiff_t>(values.size() / 2);
@@ -127,7 +134,7 @@ std::vector<std::size_t> spread_choice(const std::vector<double>& key, const std
 }
 
 // Slopes of the bins from tiles and frames alone: least squares over slopes, tiles and frames together, mean slope 1.
-std::optional<ToneShape> fitted_shape(const Tiles& tiles, const TwoWay& start) {
+std::optional<ToneShape> fitted_shape(const Tiles& tiles, const Tiles& quantiles, const TwoWay& start) {
   const std::size_t all_frames = tiles.size(), all_tiles = tiles.front().size();
   std::vector<bool> tile_seen(all_tiles), frame_seen(all_frames, true);
   for (std::size_t p = 0; p < all_tiles; ++p) {
@@ -138,7 +145,11 @@ std::optional<ToneShape> fitted_shape(const Tiles& tiles, const TwoWay& start) {
   const auto some_frames = spread_choice(start.frame, frame_seen, kCurveFrames);
   if (some_tiles.size() < static_cast<std::size_t>(kLeastTilesInCommon) || some_frames.size() < 2) return std::nullopt;
 
-  const auto size = static_cast<Eigen::Index>(kBins + some_tiles.size() + some_frames.size());
+  const std::size_t surfaces = some_tiles.size() + (quantiles.empty() ? 0 : quantiles.front().size());
+  const auto level_at = [&](std::size_t f, std::size_t t) -> const std::optional<TileLevel>& {
+    return t < some_tiles.size() ? tiles[some_frames[f]][some_tiles[t]] : quantiles[some_frames[f]][t - some_tiles.size()];
+  };
+  const auto size = static_cast<Eigen::Index>(kBins + surfaces + some_frames.size());
   Eigen::VectorXd solution = Eigen::VectorXd::Zero(size);
   solution.head(kBins).setOnes();
   std::array<double, kBins> used{};   // how much of the data lies in each bin
@@ -147,12 +158,12 @@ std::optional<ToneShape> fitted_shape(const Tiles& tiles, const TwoWay& start) {
     Eigen::MatrixXd normal = Eigen::MatrixXd::Zero(size, size);
     used.fill(0);
     for (std::size_t f = 0; f < some_frames.size(); ++f) {
-      for (std::size_t t = 0; t < some_tiles.size(); ++t) {
-        const auto& value = tiles[some_frames[f]][some_tiles[t]];
+      for (std::size_t t = 0; t < surfaces; ++t) {
+        const auto& value = level_at(f, t);
         if (!value) continue;
         const std::vector<double> lengths = ToneShape::lengths(value->level_ev);
         const auto tile_at = static_cast<Eigen::Index>(kBins + t);
-        const auto frame_at = static_cast<Eigen::Index>(kBins + some_tiles.size() + f);
+        const auto frame_at = static_cast<Eigen::Index>(kBins + surfaces + f);
         double residual = -solution[tile_at] - solution[frame_at];
         for (std::size_t k = 0; k < kBins; ++k) residual -= solution[static_cast<Eigen::Index>(k)] * lengths[k];
         const double sigma = std::hypot(value->sigma_ev, 0.01);
@@ -177,20 +188,20 @@ std::optional<ToneShape> fitted_shape(const Tiles& tiles, const TwoWay& start) {
     for (Eigen::Index a = 0; a < size; ++a) {
       for (Eigen::Index b = 0; b < a; ++b) normal(a, b) = normal(b, a);
     }
-    // Neighbouring slopes alike; mean slope 1 over the data; one constant shared by tiles and frames taken out.
+    // Slopes that change evenly; mean slope 1 over the data; one constant shared by tiles and frames taken out.
     const double strong = 1e6 * std::max(1.0, normal.diagonal().mean());
     const double rows = std::accumulate(used.begin(), used.end(), 0.0);
     const double smooth = rows / static_cast<double>(kBins) * kSmoothness;
-    for (Eigen::Index k = 0; k + 1 < static_cast<Eigen::Index>(kBins); ++k) {
-      normal(k, k) += smooth, normal(k + 1, k + 1) += smooth;
-      normal(k, k + 1) -= smooth, normal(k + 1, k) -= smooth;
+    for (Eigen::Index k = 0; k + 2 < static_cast<Eigen::Index>(kBins); ++k) {
+      Eigen::Vector3d bend(1, -2, 1);
+      normal.block<3, 3>(k, k) += smooth * bend * bend.transpose();
     }
     Eigen::VectorXd right = Eigen::VectorXd::Zero(size), gauge = Eigen::VectorXd::Zero(size);
     for (std::size_t k = 0; k < kBins; ++k) gauge[static_cast<Eigen::Index>(k)] = used[k] / rows;
     normal += strong * gauge * gauge.transpose();
     right += strong * gauge;
     for (std::size_t f = 0; f < some_frames.size(); ++f) {
-      const auto at = static_cast<Eigen::Index>(kBins + some_tiles.size() + f);
+      const auto at = static_cast<Eigen::Index>(kBins + surfaces + f);
       normal(at, at) += 1e-3;
     }
     normal.diagonal().array() += 1e-9 * strong * 1e-6;
@@ -245,12 +256,23 @@ double ToneShape::slope(double level_ev) const {
   return slopes_[bin];
 }
 
-RelativeLevels relative_levels(const Tiles& tiles) {
+std::vector<std::optional<TileLevel>> quantile_levels(const Highlights& highlights) {
+  std::vector<std::optional<TileLevel>> levels;
+  for (const double share : kShares) {
+    const auto level_ev = highlight_level_ev(highlights.frame_share_above, share);
+    constexpr double kClearOfClippingEv = -0.04;   // a share that ends within the last codes may be cut by them
+    const bool usable = level_ev && *level_ev < kClearOfClippingEv;
+    levels.push_back(usable ? std::optional(TileLevel{*level_ev, kQuantileSigmaEv}) : std::nullopt);
+  }
+  return levels;
+}
+
+RelativeLevels relative_levels(const Tiles& tiles, const Tiles& quantiles) {
   RelativeLevels result;
   result.frames.resize(tiles.size());
   if (tiles.size() < 2) return result;
   TwoWay fit = fit_two_way(tiles, result.shape);
-  if (const auto bent = fitted_shape(tiles, fit)) {
+  if (const auto bent = fitted_shape(tiles, quantiles, fit)) {
     const TwoWay with_bend = fit_two_way(tiles, *bent);
     if (with_bend.residual_ev < kBentScatter * fit.residual_ev && bend_ev(tiles, *bent) > kBentEv) {
       fit = with_bend;

@@ -45,6 +45,14 @@ struct RelativeLevels {
 // depend on the brightness of the tile, the curve is bent: its shape is found from these differences alone, with mean
 // slope 1, and no recorded exposure is used for it, so that no fault of a diaphragm or a shutter can hide in it. The
 // contrast that such a curve has as a whole stays open; see exposure_audit.h.
-RelativeLevels relative_levels(const std::vector<std::vector<std::optional<TileLevel>>>& tiles);
+//
+// `quantiles[i][q]`, which may be empty, is the level above which a share q of frame i lies (quantile_levels below): the
+// same surfaces in every frame of a static scene, single pixels of them, so that they reach up to clipping where a whole
+// tile no longer does. They serve the curve alone, not the levels of the frames.
+using TileLevels = std::vector<std::vector<std::optional<TileLevel>>>;
+RelativeLevels relative_levels(const TileLevels& tiles, const TileLevels& quantiles = {});
+
+// Levels of some fixed shares of a frame's pixels, by their largest channel; absent where clipped or below the table.
+std::vector<std::optional<TileLevel>> quantile_levels(const Highlights& highlights);
 
 }  // namespace focusfall

@@ -249,11 +249,30 @@ class Audit {
     const double slope = fit.coefficients[*slope_column_];
     const double half = t_quantile(kFamilyError, fit.degrees_of_freedom) *
                         std::sqrt(fit.covariance(*slope_column_, *slope_column_));
-    audit_.slope = Interval{slope, slope - half, slope + half};
+    audit_.slope = options_.contrast_unknown ? slope_by_halves() : Interval{slope, slope - half, slope + half};
     const bool is_one = slope - half <= 1 + kSlopeTolerance && slope + half >= 1 - kSlopeTolerance;
     if (options_.contrast_unknown || !is_one) slope_ = slope;
     audit_.contrast = slope_;
     audit_.scatter_ev = fit.sigma_ev;
+  }
+
+  // A contrast that is fitted makes the slope 1 by definition. What can still be tested is whether every second frame
+  // follows the contrast of the others: two slopes in one fit, under one light, and their ratio.
+  std::optional<Interval> slope_by_halves() const {
+    Eigen::MatrixXd design = design_;
+    Eigen::VectorXd others = design.col(*slope_column_);
+    for (Index i = 0; i < n_; ++i) (i % 2 == 0 ? others[i] : design(i, *slope_column_)) = 0;
+    if (is_spanned(design, others) || design.cols() + 2 >= n_) return std::nullopt;
+    append(design, others);
+    const LightFit fit = fit_light(design, target_, steps_);
+    const Index a = *slope_column_, b = design.cols() - 1;
+    const double first = fit.coefficients[a], second = fit.coefficients[b], ratio = second / first;
+    if (!(first > 0)) return std::nullopt;
+    // Variance of a ratio, to first order.
+    const double variance = ratio * ratio * (fit.covariance(a, a) / (first * first) + fit.covariance(b, b) / (second * second) -
+                                             2 * fit.covariance(a, b) / (first * second));
+    const double half = t_quantile(kFamilyError, fit.degrees_of_freedom) * std::sqrt(std::max(0.0, variance));
+    return Interval{ratio, ratio - half, ratio + half};
   }
 
   // From here on the slope is settled: marks and frames are judged against that line.
