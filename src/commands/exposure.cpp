@@ -13,10 +13,13 @@
 #include "src/commands/command.h"
 #include "src/commands/common_options.h"
 #include "src/output/data_stream.h"
+#include "src/output/exposure_plot.h"
 #include "src/output/exposure_report.h"
 #include "src/output/frame_json.h"
 #include "src/output/frame_text.h"
+#include "src/output/owned_file.h"
 #include "src/output/progress.h"
+#include "src/output/sheet.h"
 #include "src/output/visible_text.h"
 #include "src/pipeline/exposure_input.h"
 #include "src/pipeline/frame_pool.h"
@@ -30,6 +33,7 @@ struct ExposureCommandOptions {
   SettingsChoice settings;
   Format format = Format::text;
   ExposureOptions audit;
+  std::string plot;  // empty: none
   int workers = 0;   // 0: one a core
 };
 
@@ -105,7 +109,18 @@ class ExposureRun {
     if (edited_ > 0) {
       say(fmt::format("{} of {} frames name software that may have changed their tone.", edited_, done.size()));
     }
-    write({records_, std::move(audit), options_.audit});
+    const ExposureReport exposure{records_, std::move(audit), options_.audit};
+    if (!options_.plot.empty()) write_plot(exposure);
+    write(exposure);
+  }
+
+  void write_plot(const ExposureReport& exposure) {
+    const OwnedFile file{.path = options_.plot, .first_bytes = kMarkBytes, .is_ours = [](std::string_view first_bytes) {
+                           return is_marked_svg(first_bytes, kExposurePlotMark);
+                         }};
+    if (const auto written = write_owned_file(file, exposure_plot_svg(exposure)); !written) {
+      throw WrongUse(fmt::format("--plot {}: {}", visible_text(options_.plot), written.error()));
+    }
   }
 
   void write(const ExposureReport& exposure) {
@@ -140,6 +155,10 @@ std::function<ExitCode()> add_exposure(CLI::App& app) {
   auto options = std::make_shared<ExposureCommandOptions>();
   add_input_argument(app, options->inputs, true);
   add_format_option(app, options->format, {Format::text, Format::json, Format::csv});
+  app.add_option("--plot", options->plot,
+                 "SVG file to draw level against exposure and the error of every f-number in. Default: none. A plot of "
+                 "an earlier run is replaced, anything else is kept.")
+      ->type_name("FILE");
   constexpr const char* kGroup = "The set";
   app.add_flag("--same-light", options->audit.same_light,
                "All frames of a body show one scene under one light; frames that do not record exposure mode or flash "

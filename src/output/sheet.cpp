@@ -1,10 +1,12 @@
 #include "src/output/sheet.h"
 
+#include <cairo/cairo-svg.h>
 #include <cairo/cairo.h>
 
 #include <algorithm>
 #include <cmath>
 #include <cstdint>
+#include <numbers>
 #include <opencv2/imgproc.hpp>
 #include <stdexcept>
 #include <vector>
@@ -78,11 +80,14 @@ Surface hatching() {
 }  // namespace
 
 struct Sheet::Cairo {
+  std::string lines;   // of an SVG as it grows; outlives the surface
   Surface surface;
   std::unique_ptr<cairo_t, decltype(&cairo_destroy)> context;
 
-  Cairo(int width, int height)
-      : surface(cairo_image_surface_create(CAIRO_FORMAT_RGB24, width, height), &cairo_surface_destroy),
+  Cairo(int width, int height, SheetForm form)
+      : surface(form == SheetForm::pixels ? cairo_image_surface_create(CAIRO_FORMAT_RGB24, width, height)
+                                          : cairo_svg_surface_create_for_stream(append, &lines, width, height),
+                &cairo_surface_destroy),
         context(cairo_create(surface.get()), &cairo_destroy) {}
 
   cairo_t* get() const { return context.get(); }
@@ -115,7 +120,7 @@ struct Sheet::Cairo {
   }
 };
 
-Sheet::Sheet(int width_px, int height_px) : cairo_(std::make_unique<Cairo>(width_px, height_px)) {
+Sheet::Sheet(int width_px, int height_px, SheetForm form) : cairo_(std::make_unique<Cairo>(width_px, height_px, form)) {
   if (cairo_status(cairo_->get()) != CAIRO_STATUS_SUCCESS) {
     throw std::runtime_error(std::string("a picture cannot be drawn: ") +
                              cairo_status_to_string(cairo_status(cairo_->get())));
@@ -150,6 +155,17 @@ void Sheet::box(const SheetBox& box, const Stroke& stroke) {
   cairo_new_path(cairo_->get());
   cairo_rectangle(cairo_->get(), box.x, box.y, box.width, box.height);
   cairo_->stroke(stroke);
+}
+
+void Sheet::dot(SheetPoint centre, double diameter_px, bool filled, double grey) {
+  constexpr double kRingPx = 1.4;
+  cairo_new_path(cairo_->get());
+  cairo_arc(cairo_->get(), centre.x, centre.y, diameter_px / 2, 0, 2 * std::numbers::pi);
+  cairo_->ink(filled ? grey : 1);
+  cairo_fill_preserve(cairo_->get());
+  cairo_->ink(grey);
+  cairo_set_line_width(cairo_->get(), kRingPx);
+  cairo_stroke(cairo_->get());
 }
 
 void Sheet::fill(const SheetBox& box, double grey) {
@@ -213,6 +229,14 @@ void Sheet::text(std::string_view words, SheetPoint at, const Lettering& letteri
   cairo_new_path(context);
 }
 
+void Sheet::upright_text(std::string_view words, SheetPoint at, const Lettering& lettering) {
+  cairo_save(cairo_->get());
+  cairo_translate(cairo_->get(), at.x, at.y);
+  cairo_rotate(cairo_->get(), -std::numbers::pi / 2);
+  text(words, {0, 0}, lettering);
+  cairo_restore(cairo_->get());
+}
+
 double Sheet::text_width_px(std::string_view words, const Lettering& lettering) const {
   cairo_->font(lettering);
   cairo_text_extents_t extents{};
@@ -261,6 +285,22 @@ std::string Sheet::png(std::string_view mark) const {
     throw std::runtime_error(std::string("a PNG cannot be made: ") + cairo_status_to_string(status));
   }
   return bytes.insert(kHeaderBytes, text_chunk(mark));
+}
+
+std::string Sheet::svg(std::string_view mark) {
+  cairo_surface_finish(cairo_->surface.get());
+  const cairo_status_t status = cairo_surface_status(cairo_->surface.get());
+  const auto end_of_declaration = cairo_->lines.find("?>");
+  if (status != CAIRO_STATUS_SUCCESS || end_of_declaration == std::string::npos) {
+    throw std::runtime_error(std::string("a drawing cannot be written: ") + cairo_status_to_string(status));
+  }
+  std::string file = cairo_->lines;
+  return file.insert(end_of_declaration + 2, "\n<!-- " + std::string(mark) + " -->");
+}
+
+bool is_marked_svg(std::string_view first_bytes, std::string_view mark) {
+  return first_bytes.starts_with("<?xml") &&
+         first_bytes.find("<!-- " + std::string(mark) + " -->") != std::string_view::npos;
 }
 
 bool is_marked_png(std::string_view first_bytes, std::string_view mark) {

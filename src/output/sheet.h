@@ -33,9 +33,12 @@ struct Lettering {
   double grey = 0;
 };
 
+// Pixels that become a PNG, or lines that become an SVG.
+enum class SheetForm { pixels, lines };
+
 class Sheet {
  public:
-  Sheet(int width_px, int height_px);
+  Sheet(int width_px, int height_px, SheetForm form = SheetForm::pixels);
   ~Sheet();
   Sheet(const Sheet&) = delete;
   Sheet& operator=(const Sheet&) = delete;
@@ -60,8 +63,16 @@ class Sheet {
   void clip(const SheetBox& box);
   void unclip();
 
+  // A disc of this diameter, filled or as a ring.
+  void dot(SheetPoint centre, double diameter_px, bool filled, double grey);
+  // Words that run upwards; `at` is the start of their base line.
+  void upright_text(std::string_view words, SheetPoint at, const Lettering& lettering);
+
   // The sheet as a PNG file that carries the text chunk "Software: <mark>".
   std::string png(std::string_view mark) const;
+
+  // The sheet as an SVG file that carries the comment "<mark>"; nothing can be drawn any more. Lines only.
+  std::string svg(std::string_view mark);
 
  private:
   struct Cairo;
@@ -70,6 +81,9 @@ class Sheet {
 
 // Whether these are the first bytes of a PNG that Sheet::png() wrote with `mark`.
 bool is_marked_png(std::string_view first_bytes, std::string_view mark);
-inline constexpr std::size_t kMarkBytes = 256;   // so many bytes are enough for is_marked_png()
+inline constexpr std::size_t kMarkBytes = 256;   // so many bytes are enough for is_marked_png() and is_marked_svg()
+
+// The same for Sheet::svg().
+bool is_marked_svg(std::string_view first_bytes, std::string_view mark);
 
 }  // namespace focusfall
