@@ -88,7 +88,10 @@ struct Sheet::Cairo {
       : surface(form == SheetForm::pixels ? cairo_image_surface_create(CAIRO_FORMAT_RGB24, width, height)
                                           : cairo_svg_surface_create_for_stream(append, &lines, width, height),
                 &cairo_surface_destroy),
-        context(cairo_create(surface.get()), &cairo_destroy) {}
+        context(nullptr, &cairo_destroy) {
+    if (form == SheetForm::lines) cairo_svg_surface_set_document_unit(surface.get(), CAIRO_SVG_UNIT_PX);
+    context.reset(cairo_create(surface.get()));
+  }
 
   cairo_t* get() const { return context.get(); }
 
