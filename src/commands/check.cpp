@@ -173,7 +173,7 @@ std::function<ExitCode()> add_check(CLI::App& app) {
       ->type_name("DIR");
   add_choice<MeasureLevel>(app, "--level", options->values.level,
                            {{"full", MeasureLevel::full}, {"aim-only", MeasureLevel::aim_only}},
-                           "How much of a frame is measured; aim-only is several times faster and tells no side. "
+                           "How much of a frame is measured; aim-only is about three times as fast and tells no side. "
                            "Default: full.");
   app.add_option("--workers", options->workers, "Frames measured at a time. Default: one for each core.")
       ->check(CLI::Range(1, 256).description(""))

@@ -288,7 +288,8 @@ class Overlay {
       const SheetPoint along = direction(std::cos(angle), std::sin(angle));
       sheet_.arrow(centre, {along.x * kHalfPx, along.y * kHalfPx}, kArrow);
     };
-    if (motion_is_told(m_.motion)) draw(*m_.motion, {aim.x + aim.width / 2, aim.y + aim.height / 2});
+    // In the aim's upper right corner: its middle is the subject, and may hold the contact.
+    if (motion_is_told(m_.motion)) draw(*m_.motion, {aim.x + aim.width - kHalfPx - 8, aim.y + kHalfPx + 8});
     if (motion_is_told(m_.background_motion)) {
       const SheetPoint corner{area_.x + area_.width - 62, area_.y + 46};
       draw(*m_.background_motion, corner);
