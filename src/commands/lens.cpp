@@ -18,6 +18,7 @@
 #include "src/output/lens_report.h"
 #include "src/output/progress.h"
 #include "src/output/visible_text.h"
+#include "src/pipeline/lens_bench_input.h"
 #include "src/pipeline/lens_input.h"
 
 namespace focusfall {
@@ -33,6 +34,9 @@ struct LensOptions {
   bool brief = false;
   std::vector<ApproachRule> approach;
   LensReportOptions report;
+  SurfaceAttitude attitude;
+  bool focus_series = false;
+  std::optional<double> focus_step_um;
 };
 
 class LensRun {
@@ -48,7 +52,12 @@ class LensRun {
     ask_for_optics(gathered.records, input);
     warn_of_copies(input);
     const LensReport report = lens_report(input.readings, options_.report);
-    write({gathered.records, input, report});
+    LensOutput output{gathered.records, input, report};
+    if (options_.attitude.tilt_rad || options_.attitude.camera_height_m)
+      output.diaphragms = group_diaphragms(gathered.records, input, report, options_.attitude);
+    if (options_.focus_series || options_.focus_step_um)
+      output.focus_series = focus_series(gathered.records, options_.focus_step_um);
+    write(output);
     return gathered.complete ? ExitCode::done : ExitCode::frames_missing;
   }
 
@@ -106,6 +115,39 @@ class LensRun {
   DataStream out_{STDOUT_FILENO};
 };
 
+// An option whose text `parse` turns into `target`.
+template <class T, class Parse>
+CLI::Option* add_parsed(CLI::App& app, const char* name, std::optional<T>& target, Parse parse) {
+  return app.add_option_function<std::string>(name, [&target, name, parse](const std::string& text) {
+    const auto value = parse(text);
+    if (!value) throw CLI::ValidationError(name, value.error());
+    target = *value;
+  });
+}
+
+void add_bench_options(CLI::App& app, LensOptions& options) {
+  constexpr const char* kGroup = "On the bench";
+  auto* tilt = add_parsed(app, "--tilt", options.attitude.tilt_rad, parse_tilt_rad);
+  tilt->description("How far the surface leans away from square-on, such as 45deg: gives the working f-number from the "
+                    "slope of the blur. Default: not known.")
+      ->type_name("ANGLE")
+      ->group(kGroup);
+  add_parsed(app, "--camera-height", options.attitude.camera_height_m, parse_distance_m)
+      ->description("Height of the lens above level ground, such as 1.6m: the same from the ground. Default: not known.")
+      ->type_name("LENGTH")
+      ->group(kGroup)
+      ->excludes(tilt);
+  app.add_flag("--focus-series", options.focus_series,
+               "The frames, in their order, are one fixed surface at focus positions that go on in one direction: finds "
+               "the best position. Default: off.")
+      ->group(kGroup);
+  add_parsed(app, "--focus-step", options.focus_step_um, parse_focus_step_um)
+      ->description("The same with equal steps of this size at the sensor, such as 20um. Default: positions from the "
+                    "recorded focus distances.")
+      ->type_name("LENGTH")
+      ->group(kGroup);
+}
+
 }  // namespace
 
 std::function<ExitCode()> add_lens(CLI::App& app) {
@@ -138,6 +180,7 @@ std::function<ExitCode()> add_lens(CLI::App& app) {
                                                                            {"ordinary", SeriesKind::ordinary_frames}})
                       .description(""))
       ->type_name("KIND");
+  add_bench_options(app, *options);
   app.add_option("--workers", options->request.workers, "Frames measured at a time. Default: one for each core.")
       ->check(CLI::Range(1, 256).description(""))
       ->type_name("COUNT");

@@ -64,8 +64,29 @@ Json paths(const LensOutput& output, const std::vector<std::size_t>& frames) {
   return list;
 }
 
+Json diaphragm_json(const GroupDiaphragm& diaphragm) {
+  Json json;
+  json["frames"] = diaphragm.frames;
+  const auto& reading = diaphragm.reading;
+  put_interval(json, "f_number", reading ? std::optional(reading->f_number) : std::nullopt);
+  json["stops_wider"] = reading ? number(reading->stops_wider) : Json();
+  json["text"] = diaphragm.text;
+  return json;
+}
+
+Json focus_series_json(const FocusSeriesResult& series) {
+  Json json;
+  json["positions_from"] = series.positions_from;
+  put_interval(json, "best_position_um", series.best ? std::optional(series.best->position_um) : std::nullopt);
+  json["inside"] = series.best ? Json(series.best->inside) : Json();
+  json["slope_px_per_um"] = series.best ? number(series.best->slope_px_per_um) : Json();
+  json["text"] = series.text;
+  return json;
+}
+
 // Groups of one lens and body share the frames that were left out: those cannot be told to belong to any one of them.
-Json group_json(const LensOutput& output, const LensGroup& group) {
+Json group_json(const LensOutput& output, std::size_t number_of_group) {
+  const LensGroup& group = output.report.groups[number_of_group];
   const ReadingGroup& of = group.of;
   const Json left_out = left_out_counts(output, Owner(of.lens, of.body));
   Json json;
@@ -92,6 +113,7 @@ Json group_json(const LensOutput& output, const LensGroup& group) {
   json["p"] = group.bias_um ? number(group.p, 3) : Json();
   json["p_holm"] = group.bias_um ? number(group.p_holm, 3) : Json();
   json["outliers"] = paths(output, group.outliers);
+  json["diaphragm"] = output.diaphragms.empty() ? Json() : diaphragm_json(output.diaphragms[number_of_group]);
   json["finding"] = lens_finding_name(group.finding);
   json["text"] = group.text;
   json["next"] = group.next;
@@ -198,7 +220,7 @@ Json lens_set_json(const LensOutput& output) {
   json["used"] = output.input.readings.size();
   json["left_out"] = left_out_counts(output, std::nullopt);
   json["groups"] = Json::array();
-  for (const LensGroup& group : report.groups) json["groups"].push_back(group_json(output, group));
+  for (std::size_t g = 0; g < report.groups.size(); ++g) json["groups"].push_back(group_json(output, g));
   json["trends"] = Json::array();
   for (const LensTrend& trend : report.trends) json["trends"].push_back(trend_json(trend));
   json["lens_or_body"] = {{"lenses", effects_json(report.lens_or_body.lenses)},
@@ -207,6 +229,7 @@ Json lens_set_json(const LensOutput& output) {
                                                 ? number(*report.lens_or_body.p_interaction, 3)
                                                 : Json()},
                           {"text", lens_or_body_text(report.lens_or_body)}};
+  json["focus_series"] = output.focus_series ? focus_series_json(*output.focus_series) : Json();
   json["finding"] = report.finding ? Json(lens_finding_name(*report.finding)) : Json();
   json["summary"] = report.summary;
   return json;
@@ -223,9 +246,9 @@ std::string lens_csv_header() {
 
 std::string lens_csv_lines(const LensOutput& output) {
   std::string text;
-  for (const LensGroup& group : output.report.groups) {
+  for (std::size_t g = 0; g < output.report.groups.size(); ++g) {
     // Through the text of the JSON line, so that invalid UTF-8 is replaced in one place.
-    const Json json = Json::parse(json_line(group_json(output, group)));
+    const Json json = Json::parse(json_line(group_json(output, g)));
     std::string line;
     for (const char* column : kColumns) {
       if (column != kColumns[0]) line += ',';

@@ -11,6 +11,7 @@
 #include "analysis/compare/lens_report.h"
 #include "src/output/frame_text.h"
 #include "src/pipeline/frame_record.h"
+#include "src/pipeline/lens_bench_input.h"
 #include "src/pipeline/lens_input.h"
 
 namespace focusfall {
@@ -21,6 +22,8 @@ struct LensOutput {
   std::span<const FrameRecord> records;
   const LensInput& input;
   const LensReport& report;
+  std::vector<GroupDiaphragm> diaphragms{};            // one a group where asked for, else empty
+  std::optional<FocusSeriesResult> focus_series{};     // where asked for
 };
 
 const char* left_out_name(LeftOut reason);   // "no plane" ...

@@ -70,7 +70,8 @@ std::string frame_line(const FrameRecord& record, const TextLayout& layout) {
   return text + "\n";
 }
 
-std::string group_text(const LensOutput& output, const LensGroup& group, const LensTextOptions& options) {
+std::string group_text(const LensOutput& output, std::size_t number, const LensTextOptions& options) {
+  const LensGroup& group = output.report.groups[number];
   const TextLayout& layout = options.layout;
   std::string text = heading(group.of);
   text += block("frames", fmt::format("{} in {} acts of focusing, {}", group.of.readings.size(),
@@ -91,6 +92,7 @@ std::string group_text(const LensOutput& output, const LensGroup& group, const L
       names += (names.empty() ? "" : ", ") + visible_text(output.records[frame].path);
     text += block("outliers", names, layout);
   }
+  if (!output.diaphragms.empty()) text += block("diaphragm", output.diaphragms[number].text, layout);
   return text + block("finding", visible_text(group.text), layout) + block("next", group.next, layout);
 }
 
@@ -126,7 +128,8 @@ std::string trends_text(const LensReport& report, const TextLayout& layout) {
 
 std::string lens_text(const LensOutput& output, const LensTextOptions& options) {
   std::string text;
-  for (const LensGroup& group : output.report.groups) text += group_text(output, group, options) + "\n";
+  for (std::size_t g = 0; g < output.report.groups.size(); ++g) text += group_text(output, g, options) + "\n";
+  if (output.focus_series) text += "Focus series\n" + block("finding", output.focus_series->text, options.layout) + "\n";
   text += left_out_text(output, options.layout);
   if (!output.report.groups.empty()) {
     const int columns = std::min(options.layout.columns, kTextColumns);

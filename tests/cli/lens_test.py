@@ -125,6 +125,41 @@ class LensTest(CommandLineTest):
         self.assertIn("records.jsonl, line 14:", result.err)
         self.assertEqual(result.records[-1]["used"], 12)
 
+    def test_the_slope_tells_the_diaphragm(self):
+        """The gravel lies 60 degrees away from square-on: the camera looks down at 30. Its fine texture reads too flat;
+        a quarter of a stop is what these frames are good for, against f/1.8 in truth."""
+        (group,) = self.lens(self.stored, "--tilt", "60deg").records[-1]["groups"]
+        self.assertLess(abs(group["diaphragm"]["stops_wider"]), 0.25)
+        self.assertIn("marked is f/1.8", group["diaphragm"]["text"])
+        (group,) = self.lens(self.stored, "--camera-height", "9m").records[-1]["groups"]
+        self.assertIsNone(group["diaphragm"]["f_number"])   # higher above ground than the ground is far
+
+    def series(self, best):
+        """Fifteen positions 150 um apart, blurred as the thin lens says: 33.3 um pixels at f/1.8574."""
+        records = [json.loads(json.dumps(self.records()[0])) for _ in range(15)]
+        for number, record in enumerate(records):
+            disc = (number - best) * 150 / (33.333 * 1.8574)
+            square = disc * disc + 0.5
+            record["measurement"]["aim"]["measured_px2"] = {"value": square, "low": square - 0.5, "high": square + 0.5}
+        return self.lines(records)
+
+    def test_finds_the_best_of_a_focus_series(self):
+        result = self.lens(self.series(6.4), "--focus-step", "150um")
+        self.assert_valid(result)
+        found = result.records[-1]["focus_series"]
+        self.assertAlmostEqual(found["best_position_um"], 6.4 * 150, delta=10)
+        self.assertAlmostEqual(found["slope_px_per_um"], 1 / (33.333 * 1.8574), delta=1e-4)
+        self.assertIn("nearest to frame 7", found["text"])
+        outside = self.lens(self.series(20), "--focus-step", "150um").records[-1]["focus_series"]
+        self.assertIn("lies outside the series", outside["text"])
+
+    def test_nonsense_on_the_bench_is_said(self):
+        for option, value in (("--tilt", "0deg"), ("--tilt", "90"), ("--tilt", "steep"), ("--camera-height", "-1m"),
+                              ("--focus-step", "0um")):
+            result = self.lens(self.stored, option, value)
+            self.assertEqual(result.code, WRONG_USE)
+            self.assertIn(option, result.err)
+
     def test_bad_options(self):
         for option, value in (("--approach", "left"), ("--series", "odd"), ("--near-side", "middle")):
             self.assertEqual(self.lens(self.stored, option, value).code, WRONG_USE)
