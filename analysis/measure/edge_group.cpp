@@ -10,7 +10,6 @@ namespace {
 
 constexpr int kLevels = 5;                 // pyramid levels 0..4 of the edge estimator
 constexpr double kResidualScale = 0.03;    // relative residual that halves the weight: measured, rendered tiles
-constexpr double kWidestSigmaLevelPx = 2.5;  // wider than that the profile window cuts the edge: measured
 // What widens an edge on every level beside the disc: pixel box and pyramid prefilter, level px^2 (.08 to .58).
 constexpr double kSharpVarianceLevelPx2 = 0.33;
 // Edges along one contour repeat each other: about three of them are one independent value. Measured on tiles.
@@ -22,8 +21,8 @@ double sigma_level_px(const EdgeSample& edge) {
   return std::sqrt(std::max(double(edge.squared_disc_px2), 0.0) / (16 * scale) + kSharpVarianceLevelPx2);
 }
 
-bool too_wide(const EdgeSample& edge) {
-  return edge.saturated || sigma_level_px(edge) > kWidestSigmaLevelPx;
+bool too_wide(const EdgeSample& edge, double widest_sigma_level_px) {
+  return edge.saturated || sigma_level_px(edge) > widest_sigma_level_px;
 }
 
 double amplitude_limit_of(std::span<const EdgeSample> edges, const std::vector<int>& members) {
@@ -51,7 +50,7 @@ std::optional<EdgeGroup> on_level(std::span<const EdgeSample> edges, std::vector
     sum += weight;
     sum_x += weight * edge.x;
     sum_y += weight * edge.y;
-    if (too_wide(edge)) wide += weight;
+    if (too_wide(edge, options.widest_sigma_level_px)) wide += weight;
   }
   if (!(sum > 0)) return std::nullopt;
 

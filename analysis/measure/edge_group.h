@@ -21,6 +21,7 @@ struct EdgeGroup {
 struct EdgeGroupOptions {
   int least_edges = 6;              // below that a median and its spread mean nothing (measured on tiles)
   double least_effective_edges = 3.6;
+  double widest_sigma_level_px = 2.5;  // most of the group must be narrower; the window cuts wider ones (measured)
 };
 
 // `indices` choose from `edges`. std::nullopt below the least number of edges on every level.

@@ -83,6 +83,17 @@ int tile_side_px(cv::Size size) {
   return std::max(size.width, size.height) >= kWideFrame_px ? 128 : 64;
 }
 
+// Where the aim moved, most of the edges that a fit accepts lie along the movement and show none of it. The blur of the
+// aim is then the mean over all directions, as the forward model predicts it.
+void take_all_directions(Measurement& out) {
+  if (!out.aim_blur.estimate || !out.motion || !motion_is_significant(*out.motion)) return;
+  const double mean_px2 = out.motion->isotropic_squared_disc_px2 + out.motion->anisotropy_px2 / 2;
+  if (mean_px2 <= out.aim_blur.estimate->squared_disc_px2) return;
+  const double disc_px = blur_disc_px(mean_px2);
+  const double sigma_px2 = out.motion->anisotropy_sigma_px2 / 2;   // of the mean, that of the isotropic part included
+  out.aim_blur.estimate = blur_estimate(mean_px2, sigma_px2 / (2 * std::max(disc_px, 1.0)));
+}
+
 }  // namespace
 
 struct FrameMeasurer::Buffers {
@@ -134,10 +145,14 @@ void FrameMeasurer::Buffers::measure_aim(PixelRect aim, Measurement& out) {
     out.aim_blur.estimate = fused_blur(blur, std::nullopt);
     out.aim_blur.edges = blur ? blur->edges : 0;
     out.motion = motion(sharper);
-    if (out.aim_blur.estimate) return;
+    if (out.aim_blur.estimate) {
+      take_all_directions(out);
+      return;
+    }
   }
   out.aim_blur = reading(aim, aim_edges);
   if (!out.aim.mixed) out.motion = motion(aim_edges);
+  take_all_directions(out);
 }
 
 TileMap FrameMeasurer::Buffers::tile_map() {

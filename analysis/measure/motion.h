@@ -2,7 +2,7 @@
 //
 // A straight movement of L px along the direction phi blurs an edge whose normal makes the angle (theta - phi) with it
 // by a box of L |cos(theta - phi)| px. In squared-disc units (analysis/conventions.h)
-//   S(theta) = a + b cos 2 theta + d sin 2 theta,  m = 2 sqrt(b^2 + d^2) = 1.05 (16/12) L^2,  phi = atan2(d, b) / 2
+//   S(theta) = a + b cos 2 theta + d sin 2 theta,  m = 2 sqrt(b^2 + d^2) = .97 (16/12) L^2,  phi = atan2(d, b) / 2
 // and a - m/2 is what blurs all directions alike: defocus, diffraction and the camera's own baseline.
 #pragma once
 
