@@ -14,8 +14,8 @@
 namespace focusfall {
 
 struct MotionOptions {
-  int sectors = 8;               // of the edge normal, over 180 degrees
-  double sector_overlap = 1.3;   // width of a sector / spacing of the sectors
+  int sectors = 12;              // of the edge normal, over 180 degrees
+  double sector_overlap = 1.5;   // width of a sector / spacing of the sectors
   int least_edges_in_sector = 6; // fewer say nothing about their direction (as for a region)
   int least_sectors = 4;         // fewer cannot hold three unknowns and a check
 };
