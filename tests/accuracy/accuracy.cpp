@@ -1,5 +1,5 @@
 // The accuracy tables: what the estimators reach on rendered tiles and frames that nothing was tuned on.
-//   accuracy [--set regions|predictions|motion|planes|causes|exposure]... [--share FRACTION] [--tuning [--list]] [--quick]
+//   accuracy [--set regions|predictions|motion|planes|causes|exposure|lens]... [--share FRACTION] [--tuning [--list]] [--quick]
 // --quick runs a small part and fails where a figure has fallen back behind its regression bound (regression.h).
 #include <fmt/format.h>
 #include <opencv2/core/utility.hpp>
@@ -22,7 +22,7 @@ struct Set {
   std::vector<Figure> (*run)(const SetOptions&);
 };
 constexpr Set kSets[] = {{"regions", run_regions}, {"predictions", run_predictions}, {"motion", run_motion}, {"planes", run_planes}, {"causes", run_causes},
-                         {"exposure", run_exposure}};
+                         {"exposure", run_exposure}, {"lens", run_lens}};
 
 // How many figures have fallen back behind their bound.
 int count_fallen(const std::vector<Figure>& figures) {

@@ -20,6 +20,8 @@ inline constexpr std::array kRegressionBounds{
     RegressionBound{"region blur: median width / (25 % of c + .8 px)", 1},
     RegressionBound{"flat and smooth tiles that give a number", 3.4},          // 2 of 60
     RegressionBound{"predicted against measured: median difference", 3},
+    RegressionBound{"lens: side right where the bias is half a limit or more", 100},
+    RegressionBound{"lens: largest error of the bias, of the limit", 10},
 };
 
 }  // namespace focusfall::accuracy

@@ -52,5 +52,6 @@ std::vector<Figure> run_motion(const SetOptions& options);
 std::vector<Figure> run_planes(const SetOptions& options);
 std::vector<Figure> run_causes(const SetOptions& options);
 std::vector<Figure> run_exposure(const SetOptions& options);
+std::vector<Figure> run_lens(const SetOptions& options);
 
 }  // namespace focusfall::accuracy
