@@ -15,8 +15,11 @@
 #include "src/commands/lens_records.h"
 #include "src/output/data_stream.h"
 #include "src/output/frame_json.h"
+#include "src/output/lens_plot.h"
 #include "src/output/lens_report.h"
+#include "src/output/owned_file.h"
 #include "src/output/progress.h"
+#include "src/output/sheet.h"
 #include "src/output/visible_text.h"
 #include "src/pipeline/lens_bench_input.h"
 #include "src/pipeline/lens_input.h"
@@ -32,6 +35,7 @@ struct LensOptions {
   RecordRequest request;
   Format format = Format::text;
   bool brief = false;
+  std::string plot;   // file for the plot; empty: none
   std::vector<ApproachRule> approach;
   LensReportOptions report;
   SurfaceAttitude attitude;
@@ -58,7 +62,8 @@ class LensRun {
     if (options_.focus_series || options_.focus_step_um)
       output.focus_series = focus_series(gathered.records, options_.focus_step_um);
     write(output);
-    return gathered.complete ? ExitCode::done : ExitCode::frames_missing;
+    const bool drawn = options_.plot.empty() || draw(output);
+    return gathered.complete && drawn ? ExitCode::done : ExitCode::frames_missing;
   }
 
  private:
@@ -89,6 +94,16 @@ class LensRun {
     say(fmt::format("{} {} measured to the last digit as an earlier frame: a copied file is not a repeat, and does not "
                     "count.",
                     copies, copies == 1 ? "frame" : "frames"));
+  }
+
+  // Written where nothing or an older plot stands, never over another file.
+  bool draw(const LensOutput& output) {
+    const OwnedFile file{.path = options_.plot, .first_bytes = kMarkBytes, .is_ours = [](std::string_view first_bytes) {
+                           return is_marked_svg(first_bytes, kLensPlotMark);
+                         }};
+    const auto written = write_owned_file(file, lens_plot_svg(output));
+    if (!written) say(fmt::format("{}: {}", visible_text(options_.plot), written.error()));
+    return written.has_value();
   }
 
   void write(const LensOutput& output) {
@@ -180,6 +195,9 @@ std::function<ExitCode()> add_lens(CLI::App& app) {
                                                                            {"ordinary", SeriesKind::ordinary_frames}})
                       .description(""))
       ->type_name("KIND");
+  app.add_option("--plot", options->plot,
+                 "File for a plot (SVG) of every frame's defocus with its interval, group by group. Default: none.")
+      ->type_name("FILE");
   add_bench_options(app, *options);
   app.add_option("--workers", options->request.workers, "Frames measured at a time. Default: one for each core.")
       ->check(CLI::Range(1, 256).description(""))

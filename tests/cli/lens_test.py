@@ -4,6 +4,7 @@ import io
 import json
 import time
 import unittest
+import xml.etree.ElementTree
 
 import jsonschema
 
@@ -152,6 +153,21 @@ class LensTest(CommandLineTest):
         self.assertIn("nearest to frame 7", found["text"])
         outside = self.lens(self.series(20), "--focus-step", "150um").records[-1]["focus_series"]
         self.assertIn("lies outside the series", outside["text"])
+
+    def test_plots_every_frame_and_spares_other_files(self):
+        plot = self.folder / "plot.svg"
+        for _ in range(2):   # an older plot is replaced
+            self.assertEqual(self.lens(self.stored, "--plot", str(plot)).code, DONE)
+        drawn = xml.etree.ElementTree.parse(plot).getroot()
+        self.assertTrue(drawn.tag.endswith("svg"))
+        fewer = self.folder / "fewer.svg"
+        self.lens(self.lines(self.records()[:6]), "--plot", str(fewer))
+        self.assertGreater(plot.stat().st_size, fewer.stat().st_size)
+        other = self.write("other.svg", b"<svg/>")
+        result = self.lens(self.stored, "--plot", str(other))
+        self.assertEqual(result.code, FRAMES_MISSING)
+        self.assertEqual(other.read_bytes(), b"<svg/>")
+        self.assertEqual(len(self.lines_about(result, other)), 1)
 
     def test_nonsense_on_the_bench_is_said(self):
         for option, value in (("--tilt", "0deg"), ("--tilt", "90"), ("--tilt", "steep"), ("--camera-height", "-1m"),
