@@ -93,7 +93,7 @@ class ExitCodeTest(CommandLineTest):
             self.assertNotEqual(result.out, "")
 
     def test_help_keeps_within_the_terminal_and_gives_a_default_for_every_option(self):
-        for command in ("check", "predict"):
+        for command in ("check", "lens", "predict"):
             result = run(command, "--help", columns=80)
             for line in result.out.splitlines():
                 self.assertLessEqual(len(line), 80, line)

@@ -182,6 +182,19 @@ class LensTest(CommandLineTest):
             self.assertEqual(result.code, WRONG_USE)
             self.assertIn(option, result.err)
 
+    def test_tells_the_sides_of_approach_apart(self):
+        """Half of the frames, as if from the far side, get 60 um more: half a limit."""
+        records = self.records()
+        for number, record in enumerate(records):
+            record["path"] = f"{'far' if number % 2 else 'near'}/{number}.jpg"
+            for key in ("defocus_um", "defocus_um_low", "defocus_um_high"):
+                record["verdict"][key] += 60 * (number % 2)
+        found = self.lens(self.lines(records), "--approach", "near=near", "--approach", "far=far").records[-1]
+        (trend,) = [one for one in found["trends"] if one["kind"] == "approach"]
+        self.assertEqual(trend["acquisitions"], self.count)
+        self.assertLess(trend["slope_um_low"], 60)
+        self.assertGreater(trend["slope_um_high"], 60)
+
     def test_bad_options(self):
         for option, value in (("--approach", "left"), ("--series", "odd"), ("--near-side", "middle")):
             self.assertEqual(self.lens(self.stored, option, value).code, WRONG_USE)
