@@ -15,6 +15,9 @@ constexpr std::size_t kOpenSets = 4;
 // both the first frame and this one.
 constexpr std::size_t kReferences = 6;
 
+// A longer set is cut: the search for what stands out takes a second here and grows with the cube.
+constexpr std::size_t kMostSetFrames = 240;
+
 std::vector<std::size_t> order_in_time(std::span<const ExposureFrame> frames) {
   std::vector<std::size_t> order(frames.size());
   for (std::size_t i = 0; i < order.size(); ++i) order[i] = i;
@@ -59,6 +62,7 @@ std::vector<FrameGroup> group_frames(std::span<const ExposureFrame> frames, bool
     grouped.frame = i;
     for (auto candidate = candidates.rbegin(); candidate != candidates.rend(); ++candidate) {
       const FrameGroup& set = sets[*candidate];
+      if (set.frames.size() >= kMostSetFrames) continue;
       if (!same_light && !within_pause(frames[set.frames.back().frame], frame)) continue;
       const auto match = frame.levels ? placed(set, frames, frame) : std::nullopt;
       const bool alike = match && match->correlation >= kSameSceneCorrelation;

@@ -7,7 +7,7 @@
 namespace focusfall {
 namespace {
 
-constexpr double kSamples = 500'000;
+constexpr double kSamples = 200'000;
 
 int sampling_step(const PixelRect& area) {
   const double pixels = static_cast<double>(area.width) * area.height;
@@ -50,45 +50,55 @@ void HighlightAccumulator::start(int width_px, int height_px, PixelRect aim, int
   }
 }
 
-template <class LargestCode>
-void HighlightAccumulator::take_rows(int first_row, int rows, LargestCode largest_code) {
+template <class RowReader>
+void HighlightAccumulator::take_rows(int first_row, int rows, RowReader largest_code_of_row) {
   for (Grid& grid : grids_) {
     const int bottom = std::min(first_row + rows, grid.area.y + grid.area.height);
     const int top = std::max(first_row, grid.area.y);
     const int first = grid.area.y + (top - grid.area.y + grid.step - 1) / grid.step * grid.step;
+    const int right = grid.area.x + grid.area.width;
     for (int y = first; y < bottom; y += grid.step) {
-      for (int x = grid.area.x; x < grid.area.x + grid.area.width; x += grid.step) {
-        ++grid.counts[static_cast<std::size_t>(largest_code(x, y - first_row))];
-        ++grid.total;
-      }
+      const auto largest_code = largest_code_of_row(y - first_row);
+      for (int x = grid.area.x; x < right; x += grid.step) ++grid.counts[static_cast<std::size_t>(largest_code(x))];
+      grid.total += static_cast<std::uint64_t>((right - grid.area.x + grid.step - 1) / grid.step);
     }
   }
 }
 
 void HighlightAccumulator::take(const YccStrip& strip) {
   if (strip.cb.empty()) {
-    take_rows(strip.first_row, strip.y.rows, [&](int x, int row) { return strip.y.ptr<std::uint8_t>(row)[x]; });
+    take_rows(strip.first_row, strip.y.rows, [&](int row) {
+      return [y = strip.y.ptr<std::uint8_t>(row)](int x) { return static_cast<int>(y[x]); };
+    });
     return;
   }
-  take_rows(strip.first_row, strip.y.rows, [&](int x, int row) {
-    const int chroma_row = row / strip.chroma_step_y, chroma_x = x / strip.chroma_step_x;
-    return largest_channel(strip.y.ptr<std::uint8_t>(row)[x], strip.cb.ptr<std::uint8_t>(chroma_row)[chroma_x],
-                           strip.cr.ptr<std::uint8_t>(chroma_row)[chroma_x]);
-  });
+  // The usual steps, 1 and 2, without a division for every sample.
+  const auto take_with = [&](auto chroma_x) {
+    take_rows(strip.first_row, strip.y.rows, [&](int row) {
+      const int chroma_row = row / strip.chroma_step_y;
+      return [chroma_x, y = strip.y.ptr<std::uint8_t>(row), cb = strip.cb.ptr<std::uint8_t>(chroma_row),
+              cr = strip.cr.ptr<std::uint8_t>(chroma_row)](int x) {
+        return largest_channel(y[x], cb[chroma_x(x)], cr[chroma_x(x)]);
+      };
+    });
+  };
+  if (strip.chroma_step_x == 1) take_with([](int x) { return x; });
+  else if (strip.chroma_step_x == 2) take_with([](int x) { return x / 2; });
+  else take_with([step = strip.chroma_step_x](int x) { return x / step; });
 }
 
 void HighlightAccumulator::take(const RgbStrip& strip) {
   const int channels = strip.rgb.channels();
-  const auto largest = [channels](const auto* pixel) {
-    return static_cast<int>(channels == 1 ? pixel[0] : std::max({pixel[0], pixel[1], pixel[2]}));
+  const auto take_codes = [&]<class Code>(Code) {
+    take_rows(strip.first_row, strip.rgb.rows, [&](int row) {
+      return [channels, codes = strip.rgb.ptr<Code>(row)](int x) {
+        const Code* pixel = codes + static_cast<std::ptrdiff_t>(x) * channels;
+        return static_cast<int>(channels == 1 ? pixel[0] : std::max({pixel[0], pixel[1], pixel[2]}));
+      };
+    });
   };
-  if (strip.rgb.depth() == CV_8U) {
-    take_rows(strip.first_row, strip.rgb.rows,
-              [&](int x, int row) { return largest(strip.rgb.ptr<std::uint8_t>(row) + x * channels); });
-  } else {
-    take_rows(strip.first_row, strip.rgb.rows,
-              [&](int x, int row) { return largest(strip.rgb.ptr<std::uint16_t>(row) + x * channels); });
-  }
+  if (strip.rgb.depth() == CV_8U) take_codes(std::uint8_t{});
+  else take_codes(std::uint16_t{});
 }
 
 std::optional<Highlights> HighlightAccumulator::highlights(const std::vector<float>& linear_of_code) const {

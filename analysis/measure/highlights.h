@@ -12,7 +12,8 @@
 namespace focusfall {
 
 // Counts the largest channel of sampled pixels while strips pass by. Frame and aim are sampled on grids of their own,
-// some half a million pixels each, or all there are: a share of one in a thousand is then known to 5 %.
+// some two hundred thousand pixels each, or all there are: a share of one in a thousand is then known to 7 %, which is
+// a few hundredths of a stop. Costs about two milliseconds at 24 MP.
 class HighlightAccumulator {
  public:
   // `aim` empty = no aim. code_count is 256 or 65536.
@@ -31,8 +32,9 @@ class HighlightAccumulator {
     std::vector<std::uint32_t> counts;   // by code
     std::uint64_t total = 0;
   };
-  template <class LargestCode>
-  void take_rows(int first_row, int rows, LargestCode largest_code);
+  // largest_code_of_row(row) gives a function from x to the largest code there.
+  template <class RowReader>
+  void take_rows(int first_row, int rows, RowReader largest_code_of_row);
 
   std::array<Grid, 2> grids_;   // frame, aim
 };

@@ -22,6 +22,7 @@ namespace {
 constexpr int kCaptureDigits = 7;
 constexpr int kModelDigits = 6;
 constexpr int kMeasuredDigits = 5;
+constexpr int kLevelDigits = 5;       // levels are compared to hundredths of a stop
 
 // null for what is not finite: an infinite value always has a flag or a bound of its own beside it.
 Json number(double value, int digits) {
@@ -237,6 +238,29 @@ Json tiles_json(const TileMap& tiles) {
           {"edges", tiles.edges},       {"clipped", clipped},       {"tile_px", tiles.tile_px}};
 }
 
+Json levels_json(const LevelGrid& levels) {
+  const auto list = [](const std::vector<float>& values) {
+    Json list = Json::array();
+    for (const float value : values) list.push_back(number(static_cast<double>(value), kLevelDigits));
+    return list;
+  };
+  return {{"rows", levels.rows},
+          {"columns", levels.columns},
+          {"tile_px", levels.tile_px},
+          {"mean_linear", list(levels.mean_linear)},
+          {"contrast", list(levels.contrast)},
+          {"clipped", list(levels.clipped)}};
+}
+
+Json highlights_json(const Highlights& highlights) {
+  const auto list = [](const std::vector<float>& values) {
+    Json list = Json::array();
+    for (const float value : values) list.push_back(number(static_cast<double>(value), kLevelDigits));
+    return list;
+  };
+  return {{"frame_share_above", list(highlights.frame_share_above)}, {"aim_share_above", list(highlights.aim_share_above)}};
+}
+
 Json measurement_json(const FrameRecord& record, const FrameJsonOptions& options) {
   const Measurement& m = *record.measurement;
   Json best;
@@ -253,6 +277,8 @@ Json measurement_json(const FrameRecord& record, const FrameJsonOptions& options
                {"shadows", m.clipping ? Json{{"any", measured(m.clipping->shadows_any)}} : Json()},
                {"tone", tone_json(m.tone)}};
   if (options.tiles && m.tiles) json["tiles"] = tiles_json(*m.tiles);
+  if (options.levels && m.levels) json["levels"] = levels_json(*m.levels);
+  if (options.levels && m.highlights) json["highlights"] = highlights_json(*m.highlights);
   return json;
 }
 

@@ -22,6 +22,7 @@ struct SolvedValue {
 
 struct FrameJsonOptions {
   bool tiles = false;                  // with the tile map
+  bool levels = false;                 // with what the exposure audit compares: the level grid and the highlights
 };
 
 // The object, keys in the order of the schema. Text may hold invalid UTF-8 until json_line() writes it.

@@ -265,6 +265,33 @@ Tone tone_from(const Json& json) {
           .p99_linear = value_at<double>(json, "p99_linear")};
 }
 
+LevelGrid levels_from(const Json& json) {
+  LevelGrid levels;
+  levels.rows = value_at<int>(json, "rows");
+  levels.columns = value_at<int>(json, "columns");
+  levels.tile_px = value_at<int>(json, "tile_px");
+  levels.mean_linear = value_at<std::vector<float>>(json, "mean_linear");
+  levels.contrast = value_at<std::vector<float>>(json, "contrast");
+  levels.clipped = value_at<std::vector<float>>(json, "clipped");
+  const auto count = static_cast<std::size_t>(levels.rows) * static_cast<std::size_t>(levels.columns);
+  if (levels.rows < 0 || levels.columns < 0 || levels.mean_linear.size() != count || levels.contrast.size() != count ||
+      levels.clipped.size() != count) {
+    throw BadKey{"levels do not hold rows x columns values"};
+  }
+  return levels;
+}
+
+Highlights highlights_from(const Json& json) {
+  Highlights highlights{value_at<std::vector<float>>(json, "frame_share_above"),
+                        value_at<std::vector<float>>(json, "aim_share_above")};
+  const auto count = static_cast<std::size_t>(kHighlightSteps);
+  const bool no_aim = highlights.aim_share_above.empty();
+  if (highlights.frame_share_above.size() != count || (!no_aim && highlights.aim_share_above.size() != count)) {
+    throw BadKey{"highlights do not hold a share for every level"};
+  }
+  return highlights;
+}
+
 TileMap tiles_from(const Json& json) {
   TileMap tiles;
   tiles.rows = value_at<int>(json, "rows");
@@ -302,6 +329,8 @@ Measurement measurement_from(const Json& json) {
         object_at(json, "shadows", [](const Json& shadows) { return value_at<double>(shadows, "any"); }).value_or(0);
   }
   m.tone = object_at(json, "tone", tone_from);
+  m.levels = object_at(json, "levels", levels_from);
+  m.highlights = object_at(json, "highlights", highlights_from);
   m.tiles = object_at(json, "tiles", tiles_from);
   return m;
 }

@@ -5,7 +5,6 @@
 #include <algorithm>
 #include <cctype>
 
-#include "analysis/optics/predict.h"
 #include "src/pipeline/clock.h"
 
 namespace focusfall {
@@ -47,12 +46,10 @@ ExposureFrame exposure_frame(const FrameRecord& record) {
   frame.brightness_apex = plain(c.brightness_apex);
   if (c.exposure_mode) frame.manual_exposure = c.exposure_mode->value == ExposureMode::manual;
   frame.flash_fired = plain(c.flash_fired);
-  if (record.setup) {
-    frame.transmittance = record.setup->transmittance;
-    if (const auto focus_mm = focus_from_lens_mm(*record.setup)) {
-      const double m = magnification(record.setup->focal_length_mm, *focus_mm);
-      frame.working_ratio = working_f_number(lens_of(*record.setup), m) / record.setup->f_number;
-    }
+  if (record.setup) frame.transmittance = record.setup->transmittance;
+  // A record out of a file has its prediction, not its set-up.
+  if (record.prediction && record.prediction->working_f_number && frame.f_number) {
+    frame.working_ratio = *record.prediction->working_f_number / *frame.f_number;
   }
   frame.aim_named = record.aim_origin && record.aim_origin->kind != FocusAreaKind::centre;
   if (record.measurement) {

@@ -75,6 +75,24 @@ TEST(FrameJson, OfAnEmptyRecordIsNullEverywhere) {
   EXPECT_TRUE(json["issues"].empty());
 }
 
+TEST(FrameJson, CarriesLevelsAndHighlightsOnlyWhereAskedFor) {
+  FrameRecord record = sample_record();
+  record.measurement->levels = LevelGrid{.rows = 1, .columns = 2, .tile_px = 64, .mean_linear = {0.25f, 0.5f},
+                                         .contrast = {0.125f, 0}, .clipped = {0, 1}};
+  record.measurement->highlights = Highlights{std::vector<float>(kHighlightSteps, 0.5f), {}};
+  EXPECT_FALSE(frame_json(record)["measurement"].contains("levels"));
+  const auto back = frame_record_from_json(frame_json(record, {.levels = true}));
+  ASSERT_TRUE(back);
+  EXPECT_EQ(back->measurement->levels->mean_linear, record.measurement->levels->mean_linear);
+  EXPECT_EQ(back->measurement->levels->contrast, record.measurement->levels->contrast);
+  EXPECT_EQ(back->measurement->levels->clipped, record.measurement->levels->clipped);
+  EXPECT_EQ(back->measurement->highlights->frame_share_above, record.measurement->highlights->frame_share_above);
+  EXPECT_TRUE(back->measurement->highlights->aim_share_above.empty());
+  Json short_of_one = frame_json(record, {.levels = true});
+  short_of_one["measurement"]["levels"]["columns"] = 3;
+  EXPECT_FALSE(frame_record_from_json(short_of_one));
+}
+
 TEST(FrameJson, NamesTheKeyThatDoesNotFit) {
   Json json = frame_json(sample_record());
   json["verdict"]["focus"] = "sharp";
