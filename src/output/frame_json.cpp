@@ -238,27 +238,24 @@ Json tiles_json(const TileMap& tiles) {
           {"edges", tiles.edges},       {"clipped", clipped},       {"tile_px", tiles.tile_px}};
 }
 
+Json level_list(const std::vector<float>& values) {
+  Json list = Json::array();
+  for (const float value : values) list.push_back(number(static_cast<double>(value), kLevelDigits));
+  return list;
+}
+
 Json levels_json(const LevelGrid& levels) {
-  const auto list = [](const std::vector<float>& values) {
-    Json list = Json::array();
-    for (const float value : values) list.push_back(number(static_cast<double>(value), kLevelDigits));
-    return list;
-  };
   return {{"rows", levels.rows},
           {"columns", levels.columns},
           {"tile_px", levels.tile_px},
-          {"mean_linear", list(levels.mean_linear)},
-          {"contrast", list(levels.contrast)},
-          {"clipped", list(levels.clipped)}};
+          {"mean_linear", level_list(levels.mean_linear)},
+          {"contrast", level_list(levels.contrast)},
+          {"clipped", level_list(levels.clipped)}};
 }
 
 Json highlights_json(const Highlights& highlights) {
-  const auto list = [](const std::vector<float>& values) {
-    Json list = Json::array();
-    for (const float value : values) list.push_back(number(static_cast<double>(value), kLevelDigits));
-    return list;
-  };
-  return {{"frame_share_above", list(highlights.frame_share_above)}, {"aim_share_above", list(highlights.aim_share_above)}};
+  return {{"frame_share_above", level_list(highlights.frame_share_above)},
+          {"aim_share_above", level_list(highlights.aim_share_above)}};
 }
 
 Json measurement_json(const FrameRecord& record, const FrameJsonOptions& options) {
