@@ -285,6 +285,11 @@ Measurement FrameMeasurer::measure(const LumaPicture& picture, const MeasureRequ
   search_frame(b.pyramid, b.noise, tile_side_px(size), b.search, b.frame);
   TileMap tiles = b.tile_map();
   out.best = b.sharpest(tiles, size);
+  // One tile alone can flatter: where its surroundings turn out softer than the aim, the aim is the sharpest part.
+  const auto upper_bound = [](const BlurReading& reading) { return reading.estimate->squared_disc_high_px2; };
+  if (out.aim_blur.estimate && (!out.best || upper_bound(out.aim_blur) < upper_bound(out.best->reading))) {
+    out.best = SharpestRegion{out.aim.box, out.aim_blur};
+  }
   b.measure_background(aim, out);
   out.plane = b.measure_plane(request, size);
   if (request.keep_tiles) out.tiles = std::move(tiles);
