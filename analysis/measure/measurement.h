@@ -84,6 +84,7 @@ struct Clipping {
   ClippedKind kind = ClippedKind::none;
   ClippedOn measured_on = ClippedOn::picture;
   double shadows_any = 0;            // pixels whose every channel is at the black end
+  std::optional<double> headroom_ev{};   // mosaic: stops above the level where the picture clips
 };
 
 struct Tone {

@@ -78,9 +78,8 @@ class MosaicAccumulator {
   std::optional<double> headroom_ev(const Clipping& picture) const;
 
  private:
-  template <int kChannels>
-  void count_rows(const MosaicStrip& strip);
-  void count_cells(const MosaicStrip& strip);
+  void count_row(int y, const cv::Mat& codes, int row);
+  void finish_cells(int cell_row);
 
   MosaicFormat format_;
   MosaicCounts counts_;
@@ -89,7 +88,7 @@ class MosaicAccumulator {
   std::array<std::vector<std::uint32_t>, 3> histograms_; // of code - black, by channel
   std::vector<std::uint32_t> aim_green_;
   std::array<double, 3> span_{};                         // white - black
-  std::vector<std::uint8_t> cell_flags_;
+  std::vector<std::uint8_t> cell_flags_;                 // of the row of cells at hand: saturated colours, any light
   std::vector<std::uint64_t> mask_;
 };
 

@@ -21,6 +21,8 @@ struct Codec {
 extern const Codec kJpegCodec;   // jpeg.cpp
 extern const Codec kPngCodec;    // png.cpp
 extern const Codec kTiffCodec;   // tiff.cpp
+extern const Codec kHeifCodec;   // heif.cpp
+extern const Codec kRawCodec;    // raw.cpp
 
 // True where `file` has these bytes at `offset`.
 bool has_bytes(std::span<const std::byte> file, std::size_t offset, std::string_view bytes);

@@ -12,8 +12,8 @@
 namespace focusfall {
 namespace {
 
-// Asked in this order; the first that recognises the file has it.
-constexpr std::array kCodecs = {&kJpegCodec, &kPngCodec, &kTiffCodec};
+// Asked in this order; the first that recognises the file has it. Many raw files are TIFFs too.
+constexpr std::array kCodecs = {&kJpegCodec, &kPngCodec, &kHeifCodec, &kRawCodec, &kTiffCodec};
 
 std::string expected_kinds() {
   std::string kinds;

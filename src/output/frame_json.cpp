@@ -207,16 +207,18 @@ Json plane_json(const std::optional<PlaneReading>& plane) {
 
 Json clipping_json(const std::optional<Clipping>& c) {
   if (!c) return nullptr;
-  return {{"red", measured(c->red)},
-          {"green", measured(c->green)},
-          {"blue", measured(c->blue)},
-          {"any", measured(c->any)},
-          {"aim_any", measured(c->aim_any)},
-          {"largest_patch", measured(c->largest_patch)},
-          {"kind", name_of(c->kind)},
-          {"measured_on", name_of(c->measured_on)},
-          {"two_or_more", measured(c->two_or_more)},
-          {"aim_two_or_more", measured(c->aim_two_or_more)}};
+  Json json = {{"red", measured(c->red)},
+               {"green", measured(c->green)},
+               {"blue", measured(c->blue)},
+               {"any", measured(c->any)},
+               {"aim_any", measured(c->aim_any)},
+               {"largest_patch", measured(c->largest_patch)},
+               {"kind", name_of(c->kind)},
+               {"measured_on", name_of(c->measured_on)},
+               {"two_or_more", measured(c->two_or_more)},
+               {"aim_two_or_more", measured(c->aim_two_or_more)}};
+  if (c->headroom_ev) json["headroom_ev"] = measured(*c->headroom_ev);
+  return json;
 }
 
 Json tone_json(const std::optional<Tone>& tone) {
@@ -334,6 +336,8 @@ double rounded(double value, int digits) {
 Json frame_json(const FrameRecord& record, const FrameJsonOptions& options) {
   Json json = {{"schema", kFrameSchema}, {"path", record.path.empty() ? Json() : Json(record.path)}};
   if (!is_utf8(record.path)) json["path_bytes"] = base64(record.path);
+  if (record.raw_path) json["raw_path"] = *record.raw_path;
+  if (record.measured_from) json["measured_from"] = *record.measured_from;
   json["capture"] = record.capture ? capture_json(*record.capture) : Json();
   json["prediction"] = record.prediction ? prediction_json(*record.prediction) : Json();
   json["aim"] = aim_json(record);

@@ -255,6 +255,7 @@ Clipping clipping_from(const Json& json) {
   c.measured_on = enum_at<ClippedOn>(json, "measured_on");
   c.two_or_more = value_at<double>(json, "two_or_more");
   c.aim_two_or_more = value_at<double>(json, "aim_two_or_more");
+  c.headroom_ev = optional_at<double>(json, "headroom_ev");
   return c;
 }
 
@@ -379,6 +380,8 @@ FrameRecord record_from(const Json& json) {
   }
   FrameRecord record;
   record.path = path_from(json);
+  record.raw_path = optional_at<std::string>(json, "raw_path");
+  record.measured_from = optional_at<std::string>(json, "measured_from");
   record.capture = object_at(json, "capture", capture_from);
   record.prediction = object_at(json, "prediction", prediction_from);
   record.measurement = object_at(json, "measurement", measurement_from);

@@ -25,6 +25,8 @@ struct Issue {
 
 struct FrameRecord {
   std::string path;                           // as given, raw bytes
+  std::optional<std::string> raw_path;        // of a RAW+JPEG pair: the raw file, whose mosaic gave clipping and tone
+  std::optional<std::string> measured_from;   // of a raw file: "embedded preview" or "half-size development"
   std::optional<Capture> capture;             // 1 read: what the camera recorded, each value with its source
   std::optional<OpticalSetup> setup;          // 2 resolve: file, command line and settings brought together
   std::optional<FocusArea> aim_origin;        //   and where the aim came from

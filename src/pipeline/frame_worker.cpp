@@ -10,6 +10,7 @@
 #include "analysis/optics/predict.h"
 #include "metadata/read_capture.h"
 #include "src/decode/decoder.h"
+#include "src/decode/mosaic.h"
 #include "src/pipeline/picture_sink.h"
 #include "src/pipeline/resolve.h"
 
@@ -24,6 +25,7 @@ void note_format(const PictureFormat& format, FrameRecord& record) {
   capture.width_px = format.width_px;
   capture.height_px = format.height_px;
   if (format.orientation) capture.orientation = {*format.orientation, Source::exif};
+  if (format.measured_from != MeasuredFrom::picture) record.measured_from = measured_from_name(format.measured_from);
   for (const DecodeNote& note : format.notes) record.issues.push_back({Stage::decode, note.code, note.message});
 }
 
@@ -62,6 +64,18 @@ bool brightness_predicts(const Capture& capture) {
          capture.flash_fired && !capture.flash_fired->value;
 }
 
+class MosaicCounter final : public MosaicSink {
+ public:
+  void set_aim(const FractionBox& aim) { options_.aim = aim; }
+  void start(const MosaicFormat& format) override { counts_.start(format, options_); }
+  void take(const MosaicStrip& strip) override { counts_.take(strip); }
+  const MosaicAccumulator& counts() const { return counts_; }
+
+ private:
+  MosaicClippingOptions options_;
+  MosaicAccumulator counts_;
+};
+
 }  // namespace
 
 struct FrameWorker::State {
@@ -70,6 +84,7 @@ struct FrameWorker::State {
   FileBuffer file;
   DecodeWorkspace decode;
   PictureSink sink;
+  MosaicCounter mosaic;
   FrameMeasurer measurer;
   ForwardMemory forward;
 
@@ -77,6 +92,7 @@ struct FrameWorker::State {
   Resolved resolve_frame(FrameRecord& record, const PictureFormat& format);
   bool decode_frame(std::span<const std::byte> bytes, FrameRecord& record);
   void measure(const Resolved& resolved, FrameRecord& record);
+  void count_mosaic(std::span<const std::byte> raw, FrameRecord& record);
   void compare_frame(const Resolved& resolved, FrameRecord& record);
   void run(std::span<const std::byte> bytes, FrameRecord& record);
 };
@@ -150,6 +166,19 @@ void FrameWorker::State::measure(const Resolved& resolved, FrameRecord& record) 
   record.measurement = std::move(measurement);
 }
 
+// Clipping and tone as the sensor saw them take the place of those of the developed picture.
+void FrameWorker::State::count_mosaic(std::span<const std::byte> raw, FrameRecord& record) {
+  mosaic.set_aim(box_of(record.aim_origin->box));
+  if (const auto decoded = decode_mosaic(raw, mosaic); !decoded) {
+    record.issues.push_back({Stage::decode, decoded.error().code, decoded.error().message});
+    return;
+  }
+  Clipping clipping = mosaic.counts().clipping();
+  clipping.headroom_ev = mosaic.counts().headroom_ev(*record.measurement->clipping);
+  record.measurement->clipping = clipping;
+  record.measurement->tone = mosaic.counts().tone();
+}
+
 void FrameWorker::State::compare_frame(const Resolved& resolved, FrameRecord& record) {
   CompareOptions options;
   options.aim_assumed = !resolved.aim_may_be_judged;
@@ -170,6 +199,7 @@ void FrameWorker::State::run(std::span<const std::byte> bytes, FrameRecord& reco
   const Resolved resolved = resolve_frame(record, format);
   if (!decode_frame(bytes, record)) return;
   measure(resolved, record);
+  if (is_camera_raw(bytes)) count_mosaic(bytes, record);
   compare_frame(resolved, record);
   record.done = true;
 }

@@ -39,6 +39,8 @@ inline constexpr IssueCode kIssueCodes[] = {
     {"preview-only", "measured on the embedded preview"},
     {"raw-damaged", "the raw data are damaged"},
     {"raw-unknown-body", "the raw file's body is not known"},
+    {"raw-unsupported", "the photosites of the raw file are not of red, green and blue"},
+    {"not-raw", "the partner of a picture is no raw file"},
     // Capture data.
     {"metadata-unreadable", "the capture data, or a part of them, cannot be read"},
     {"metadata-value-absurd", "a value that no camera can have meant"},

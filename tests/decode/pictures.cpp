@@ -4,13 +4,14 @@
 #include <lcms2.h>
 #include <png.h>
 #include <tiffio.h>
-#include <tiffio.hxx>
 
 #include <algorithm>
 #include <bit>
 #include <cstdlib>
 #include <cstring>
-#include <sstream>
+#include <filesystem>
+#include <fstream>
+#include <iterator>
 #include <stdexcept>
 
 namespace focusfall::test {
@@ -100,13 +101,18 @@ Bytes palette_png(const cv::Mat& indices, const std::vector<cv::Vec3b>& palette)
   });
 }
 
+// libtiff reads its own directories again while it writes: it wants a file, which is gone as soon as it is read.
 Bytes tiff_in_memory(const std::function<void(void*)>& write) {
-  std::ostringstream stream;
-  TIFF* tiff = TIFFStreamOpen("memory", static_cast<std::ostream*>(&stream));
-  if (tiff == nullptr) throw std::runtime_error("libtiff opens no stream");
+  std::string name = (std::filesystem::temp_directory_path() / "focusfall-XXXXXX").string();
+  const int descriptor = mkstemp(name.data());
+  TIFF* tiff = descriptor < 0 ? nullptr : TIFFFdOpen(descriptor, name.c_str(), "w");
+  if (tiff == nullptr) throw std::runtime_error("libtiff opens no file");
   write(tiff);
   TIFFClose(tiff);
-  return bytes_of(stream.str());
+  std::ifstream stream(name, std::ios::binary);
+  const std::string text((std::istreambuf_iterator<char>(stream)), {});
+  std::filesystem::remove(name);
+  return bytes_of(text);
 }
 
 Bytes tiff_of(const cv::Mat& picture, const TiffOptions& options) {
