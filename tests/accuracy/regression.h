@@ -22,6 +22,13 @@ inline constexpr std::array kRegressionBounds{
     RegressionBound{"predicted against measured: median difference", 3},
     RegressionBound{"lens: side right where the bias is half a limit or more", 100},
     RegressionBound{"lens: largest error of the bias, of the limit", 10},
+    RegressionBound{"exposure, sRGB, 1/3 stop off: frames within .05 stop", 95},                    // of 80
+    RegressionBound{"exposure, sRGB, 1/3 stop off: fault found and nothing else blamed", 100},      // of 2 sets
+    RegressionBound{"exposure, sRGB, faultless: sets that blame a mark", 0},
+    RegressionBound{"exposure, S-shaped, 1/3 stop off: fault found and nothing else blamed", 100},
+    RegressionBound{"exposure, S-shaped, faultless: sets with slope within 2 %", 100},
+    RegressionBound{"exposure, S-shaped, faultless: pull back within .15 stop", 90},                // of 43
+    RegressionBound{"exposure, S-shaped, faultless: lower bounds of single frames above the truth", 0},
 };
 
 }  // namespace focusfall::accuracy
