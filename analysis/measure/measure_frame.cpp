@@ -137,7 +137,7 @@ BlurReading FrameMeasurer::Buffers::reading(PixelRect region, const std::vector<
 void FrameMeasurer::Buffers::measure_aim(PixelRect aim, Measurement& out) {
   aim_edges.clear();
   find_edges(pyramid, aim, noise, {.edges_per_block = aim_edges_per_block(aim)}, search, aim_edges);
-  const std::vector<EdgeSample> sharper = sharper_group(aim_edges, aim);
+  const auto [sharper, softer] = edge_groups(aim_edges, aim);
   out.aim.mixed = !sharper.empty();
   if (out.aim.mixed) {
     // The spectrum is of both together and says nothing here.
@@ -146,6 +146,7 @@ void FrameMeasurer::Buffers::measure_aim(PixelRect aim, Measurement& out) {
     out.aim_blur.edges = blur ? blur->edges : 0;
     out.motion = motion(sharper);
     if (out.aim_blur.estimate) {
+      out.aim_softer_part = fused_blur(edge_blur(softer, {.least_edges = kLeastAimEdges}), std::nullopt);
       take_all_directions(out);
       return;
     }

@@ -187,7 +187,7 @@ std::optional<SpectralBlur> region_spectrum(const Pyramid& pyramid, PixelRect re
   return best;
 }
 
-std::vector<EdgeSample> sharper_group(std::span<const EdgeSample> edges, PixelRect region) {
+EdgeGroups edge_groups(std::span<const EdgeSample> edges, PixelRect region) {
   std::vector<Point> points;
   for (const EdgeSample& edge : edges) {
     const int cx = std::clamp(static_cast<int>((edge.x - static_cast<float>(region.x)) * kCells /
@@ -211,11 +211,11 @@ std::vector<EdgeSample> sharper_group(std::span<const EdgeSample> edges, PixelRe
       std::sqrt((sharp.weight * sharp.variance() + soft.weight * soft.variance()) / total);
   if (gap < std::log(kLeastRatio) || gap < kLeastGap * pooled || !lie_apart(points)) return {};
 
-  std::vector<EdgeSample> kept;
+  EdgeGroups groups;
   for (std::size_t i = 0; i < points.size(); ++i) {
-    if (points[i].sharp) kept.push_back(edges[i]);
+    (points[i].sharp ? groups.sharper : groups.softer).push_back(edges[i]);
   }
-  return kept;
+  return groups;
 }
 
 }  // namespace focusfall

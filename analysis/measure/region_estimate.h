@@ -25,9 +25,13 @@ BlurEstimate blur_estimate(double squared_disc_px2, double sigma_px, Bound bound
 std::optional<SpectralBlur> region_spectrum(const Pyramid& pyramid, PixelRect region, SpectralEstimator& estimator,
                                             cv::Mat& scratch);
 
-// A region that holds two blurs (a subject and what is behind it): the edges of the sharper one, or empty if one blur
-// explains them all. The split asks for a clear gap, a quarter of the weight, 12 edges, and for the two groups to lie
-// in different places: the scatter of one blur does not.
-std::vector<EdgeSample> sharper_group(std::span<const EdgeSample> edges, PixelRect region);
+// The edges of a region that holds two blurs (a subject and what is behind it, or two parts of one subject), apart.
+struct EdgeGroups {
+  std::vector<EdgeSample> sharper, softer;   // both empty where one blur explains all edges
+};
+
+// The split asks for a clear gap, a quarter of the weight in the sharper group, 12 edges in each, and for the two groups
+// to lie in different places: the scatter of one blur does not.
+EdgeGroups edge_groups(std::span<const EdgeSample> edges, PixelRect region);
 
 }  // namespace focusfall

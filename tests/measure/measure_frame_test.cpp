@@ -102,16 +102,22 @@ TEST(MeasureFrame, IsTheSameTwiceAndAfterAnotherFrame) {
   EXPECT_EQ(first.tiles->squared_disc_px2, second.tiles->squared_disc_px2);
 }
 
-TEST(MeasureFrame, AnAimOverTwoBlursIsMixedAndJudgedByTheSharper) {
-  // Left half of the aim on a subject at 2 px, right half on a background at 14 px.
-  cv::Mat frame = rendered(render::Texture::dead_leaves, 14, 768, 5);
-  rendered(render::Texture::dead_leaves, 2, 768, 6)(cv::Rect(0, 0, 384, 768)).copyTo(frame(cv::Rect(0, 0, 384, 768)));
-  const LumaPicture picture{frame, srgb_linear_of_code(256)};
-  FrameMeasurer measurer;
-  const Measurement measurement = measurer.measure(picture, at(0.3, 0.3, 0.4));
-  EXPECT_TRUE(measurement.aim.mixed);
-  ASSERT_TRUE(measurement.aim_blur.estimate);
-  EXPECT_NEAR(blur_disc_px(measurement.aim_blur.estimate->squared_disc_px2), 2, 0.4);
+TEST(MeasureFrame, AnAimOverTwoBlursIsMixedAndJudgedByTheSharperKeepingTheSofter) {
+  // Left half of the aim at 2 px, right half softer: a part of the same subject, then a background. Nearer
+  // to each other, 6 px beside 2 px, they are not told apart.
+  for (const double softer : {8.0, 14.0}) {
+    cv::Mat frame = rendered(render::Texture::dead_leaves, softer, 768, 5);
+    rendered(render::Texture::dead_leaves, 2, 768, 6)(cv::Rect(0, 0, 384, 768)).copyTo(frame(cv::Rect(0, 0, 384, 768)));
+    const LumaPicture picture{frame, srgb_linear_of_code(256)};
+    FrameMeasurer measurer;
+    const Measurement measurement = measurer.measure(picture, at(0.3, 0.3, 0.4));
+    EXPECT_TRUE(measurement.aim.mixed) << softer;
+    ASSERT_TRUE(measurement.aim_blur.estimate) << softer;
+    EXPECT_NEAR(blur_disc_px(measurement.aim_blur.estimate->squared_disc_px2), 2, 0.4);
+    // The other half keeps its own value, within the scatter that one region has (as above).
+    ASSERT_TRUE(measurement.aim_softer_part) << softer;
+    EXPECT_NEAR(blur_disc_px(measurement.aim_softer_part->squared_disc_px2), softer, 0.08 * softer + 0.2);
+  }
 }
 
 TEST(MeasureFrame, OneBlurIsNotCalledMixed) {
@@ -119,7 +125,9 @@ TEST(MeasureFrame, OneBlurIsNotCalledMixed) {
   for (const double c : {2.0, 8.0, 20.0}) {
     for (std::uint64_t key = 0; key < 4; ++key) {
       const LumaPicture picture{rendered(render::Texture::mixed, c, 400, 60 + key), srgb_linear_of_code(256)};
-      EXPECT_FALSE(measurer.measure(picture, at(0.2, 0.2, 0.6)).aim.mixed) << c << ' ' << key;
+      const Measurement measurement = measurer.measure(picture, at(0.2, 0.2, 0.6));
+      EXPECT_FALSE(measurement.aim.mixed) << c << ' ' << key;
+      EXPECT_FALSE(measurement.aim_softer_part) << c << ' ' << key;
     }
   }
 }
