@@ -13,7 +13,9 @@ if [ ! -x "$program" ] ||
    [ -n "$(find "$top/CMakeLists.txt" "$top/src" "$top/analysis" "$top/metadata" -newer "$program" -type f -print -quit)" ]; then
   # shellcheck source=src/setup.sh
   . "$top/src/setup.sh"
-  install_packages "$yes" "$top/src/packages.txt"
+  lists=("$top/src/packages.txt")
+  command -v npm >/dev/null || lists+=("$top/src/page/packages.txt")
+  install_packages "$yes" "${lists[@]}"
   log=$(mktemp)
   trap 'rm -f "$log"' EXIT
   echo "Building focusfall into build/ (a few minutes the first time)..." >&2

@@ -16,7 +16,9 @@ while [ $# -gt 0 ]; do
 done
 # shellcheck source=src/setup.sh
 . "$top/src/setup.sh"
-install_packages "$yes" "$top/src/packages.txt" "$top/tests/packages.txt"
+lists=("$top/src/packages.txt" "$top/tests/packages.txt")
+command -v npm >/dev/null || lists+=("$top/src/page/packages.txt")
+install_packages "$yes" "${lists[@]}"
 build=$top/build-tests
 cmake -S "$top" -B "$build" -G Ninja -DCMAKE_BUILD_TYPE=Release -DFOCUSFALL_TESTS=ON >/dev/null
 cmake --build "$build"

@@ -11,6 +11,7 @@ constexpr Command kCommands[] = {
      add_exposure},
     {"lens", "Front or back focus of a lens and body from many frames: bias, repeatability, trends.", add_lens},
     {"predict", "The model of a shot or a plan: depth of field, blur, diffraction, motion, exposure.", add_predict},
+    {"report", "One page to look at: where focus fell in every frame of a shoot.", add_report},
 };
 
 std::atomic<bool> interrupt_flag{false};

@@ -39,6 +39,7 @@ std::function<ExitCode()> add_check(CLI::App& app);
 std::function<ExitCode()> add_exposure(CLI::App& app);
 std::function<ExitCode()> add_lens(CLI::App& app);
 std::function<ExitCode()> add_predict(CLI::App& app);
+std::function<ExitCode()> add_report(CLI::App& app);
 
 // Set by the first interrupt; frames begun are finished, no other is begun. A second interrupt ends the program.
 const std::atomic<bool>& interrupted();
