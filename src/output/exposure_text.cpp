@@ -135,14 +135,14 @@ std::vector<std::string> audit_sentences(const ExposureReport& report, const Exp
   return sentences;
 }
 
-std::string bracket_text(const Bracket& bracket) {
+std::string bracket_text(const Bracket& bracket, bool curve_unknown) {
   std::string text = fmt::format("Bracket of {} frames in steps of {:.2f} stops; set and measured:", bracket.frames.size(),
                                  bracket.step_ev);
   for (std::size_t k = 0; k < bracket.frames.size(); ++k) {
     text += fmt::format("{} {}/{}", k == 0 ? "" : ",", ev_text(bracket.set_ev[k]),
                         bracket.measured_ev[k] ? ev_text(*bracket.measured_ev[k]) : "unknown");
   }
-  return text + ".";
+  return text + (curve_unknown ? ". The tone curve is not known: measured steps are scaled to span what was set." : ".");
 }
 
 std::string vignetting_text(const ExposureSet& set) {
@@ -166,7 +166,7 @@ std::string exposure_set_text(const ExposureReport& report, std::size_t index, c
     for (const std::string& sentence : audit_sentences(report, set)) text += folded(sentence, layout.columns);
   }
   if (const std::string sentence = vignetting_text(set); !sentence.empty()) text += folded(sentence, layout.columns);
-  for (const Bracket& bracket : set.brackets) text += folded(bracket_text(bracket), layout.columns);
+  for (const Bracket& bracket : set.brackets) text += folded(bracket_text(bracket, set.curve_bent), layout.columns);
   return text + "\n";
 }
 
