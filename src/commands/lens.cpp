@@ -41,6 +41,8 @@ struct LensOptions {
   SurfaceAttitude attitude;
   bool focus_series = false;
   std::optional<double> focus_step_um;
+  bool flat = false;
+  FlatRequest wall;
 };
 
 class LensRun {
@@ -61,6 +63,7 @@ class LensRun {
       output.diaphragms = group_diaphragms(gathered.records, input, report, options_.attitude);
     if (options_.focus_series || options_.focus_step_um)
       output.focus_series = focus_series(gathered.records, options_.focus_step_um);
+    if (options_.flat) output.flat = flat_field(gathered.records, options_.wall);
     write(output);
     const bool drawn = options_.plot.empty() || draw(output);
     return gathered.complete && drawn ? ExitCode::done : ExitCode::frames_missing;
@@ -161,6 +164,26 @@ void add_bench_options(CLI::App& app, LensOptions& options) {
                     "recorded focus distances.")
       ->type_name("LENGTH")
       ->group(kGroup);
+  auto* flat = app.add_flag("--flat", options.flat,
+                            "The frames show a flat wall, square-on: size and axis of the field's tilt and its "
+                            "curvature. Default: off.")
+                   ->group(kGroup);
+  app.add_option("--focus-travel", options.wall.travel,
+                 "Direction in which focus moves from frame to frame: near-to-far or far-to-near. Gives the field its "
+                 "sign. Default: not known.")
+      ->transform(CLI::CheckedTransformer(std::map<std::string, FocusTravel>{{"near-to-far", FocusTravel::near_to_far},
+                                                                            {"far-to-near", FocusTravel::far_to_near}})
+                      .description(""))
+      ->type_name("DIRECTION")
+      ->group(kGroup)
+      ->needs(flat);
+  app.add_option("--upside-down", options.wall.upside_down,
+                 "File or folder of a second series with the camera upside down: tells lens and body from the wall; may "
+                 "be given again. Default: none.")
+      ->type_name("PATH")
+      ->group(kGroup)
+      ->allow_extra_args(false)
+      ->needs(flat);
 }
 
 }  // namespace
@@ -204,7 +227,10 @@ std::function<ExitCode()> add_lens(CLI::App& app) {
       ->type_name("COUNT");
   add_value_options(app, options->request.values);
   add_settings_options(app, options->request.settings);
-  return [options] { return LensRun(*options).run(); };
+  return [options] {
+    options->request.values.tiles = options->flat;
+    return LensRun(*options).run();
+  };
 }
 
 }  // namespace focusfall

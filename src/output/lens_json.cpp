@@ -84,6 +84,18 @@ Json focus_series_json(const FocusSeriesResult& series) {
   return json;
 }
 
+Json flat_json(const FlatResult& flat) {
+  Json json;
+  json["frames"] = flat.frames;
+  put_interval(json, "tilt_um", flat.tilt_um);
+  json["axis_deg"] = flat.axis_deg ? number(*flat.axis_deg, 4) : Json();
+  put_interval(json, "curvature_um", flat.curvature_um);
+  json["signed"] = flat.signed_field;
+  put_interval(json, "camera_tilt_um", flat.camera_tilt_um);
+  json["text"] = flat.text;
+  return json;
+}
+
 // Groups of one lens and body share the frames that were left out: those cannot be told to belong to any one of them.
 Json group_json(const LensOutput& output, std::size_t number_of_group) {
   const LensGroup& group = output.report.groups[number_of_group];
@@ -230,6 +242,7 @@ Json lens_set_json(const LensOutput& output) {
                                                 : Json()},
                           {"text", lens_or_body_text(report.lens_or_body)}};
   json["focus_series"] = output.focus_series ? focus_series_json(*output.focus_series) : Json();
+  json["flat"] = output.flat ? flat_json(*output.flat) : Json();
   json["finding"] = report.finding ? Json(lens_finding_name(*report.finding)) : Json();
   json["summary"] = report.summary;
   return json;

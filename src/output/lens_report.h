@@ -12,6 +12,7 @@
 #include "src/output/frame_text.h"
 #include "src/pipeline/frame_record.h"
 #include "src/pipeline/lens_bench_input.h"
+#include "src/pipeline/lens_flat_input.h"
 #include "src/pipeline/lens_input.h"
 
 namespace focusfall {
@@ -24,6 +25,7 @@ struct LensOutput {
   const LensReport& report;
   std::vector<GroupDiaphragm> diaphragms{};            // one a group where asked for, else empty
   std::optional<FocusSeriesResult> focus_series{};     // where asked for
+  std::optional<FlatResult> flat{};                    // where asked for
 };
 
 const char* left_out_name(LeftOut reason);   // "no plane" ...

@@ -130,6 +130,7 @@ std::string lens_text(const LensOutput& output, const LensTextOptions& options) 
   std::string text;
   for (std::size_t g = 0; g < output.report.groups.size(); ++g) text += group_text(output, g, options) + "\n";
   if (output.focus_series) text += "Focus series\n" + block("finding", output.focus_series->text, options.layout) + "\n";
+  if (output.flat) text += "Flat wall\n" + block("finding", output.flat->text, options.layout) + "\n";
   text += left_out_text(output, options.layout);
   if (!output.report.groups.empty()) {
     const int columns = std::min(options.layout.columns, kTextColumns);

@@ -2,6 +2,7 @@
 import csv
 import io
 import json
+import math
 import time
 import unittest
 import xml.etree.ElementTree
@@ -174,6 +175,44 @@ class LensTest(CommandLineTest):
         self.assertEqual(result.code, FRAMES_MISSING)
         self.assertEqual(other.read_bytes(), b"<svg/>")
         self.lines_about(result, other)
+
+    def test_a_leaning_surface_is_a_tilted_field(self):
+        """The gravel taken for a wall: 22.65 px of disc a frame height, 1264 um to half a diagonal, straight down the
+        frame. Fine gravel reads up to a quarter too flat."""
+        result = run("lens", "--format", "json", "--flat", str(BENCH[0]))
+        self.assert_valid(result)
+        flat = result.records[-1]["flat"]
+        self.assertAlmostEqual(flat["axis_deg"], 90, delta=5)
+        self.assertGreater(flat["tilt_um"], 0.75 * 1264)
+        self.assertLess(flat["tilt_um"], 1.05 * 1264)
+        self.assertFalse(flat["signed"])
+        self.assertIn("lens, body and wall together", flat["text"])
+
+    def walls(self, folder, x_tilt_px):
+        """Five frames of a wall with a tilt along the long side, focus moved on by 2 px of disc from frame to frame."""
+        records = [json.loads(json.dumps(self.records()[0])) for _ in range(5)]
+        half_diagonal_px = math.hypot(1080, 720) / 2
+        for number, record in enumerate(records):
+            record["path"] = f"{folder}/{number}.jpg"
+            discs = [abs(2 * (number - 2) + x_tilt_px * (60 + 120 * column - 540) / half_diagonal_px)
+                     for row in range(6) for column in range(9)]
+            record["measurement"]["tiles"] = {"rows": 6, "columns": 9, "blur_disc_px": discs, "edges": [30] * 54,
+                                              "clipped": [0] * 54, "tile_px": 120}
+        return records
+
+    def test_a_series_gives_the_field_its_sign_and_a_second_one_its_owner(self):
+        um_per_px = 33.333 * 1.8574
+        one = self.lines(self.walls("upright", 5))
+        flat = self.lens(one, "--flat", "--focus-travel", "near-to-far").records[-1]["flat"]
+        self.assertTrue(flat["signed"])
+        self.assertAlmostEqual(flat["tilt_um"], 5 * um_per_px, delta=0.1 * um_per_px)
+        self.assertIn("further behind to the right", flat["text"])
+        flat = self.lens(one, "--flat", "--focus-travel", "far-to-near").records[-1]["flat"]
+        self.assertIn("further behind to the left", flat["text"])
+        both = one + self.lines(self.walls("turned", -1))   # 2 px of lens and body, 3 px of the wall
+        result = self.lens(both, "--flat", "--focus-travel", "near-to-far", "--upside-down", "turned")
+        self.assert_valid(result)
+        self.assertAlmostEqual(result.records[-1]["flat"]["camera_tilt_um"], 2 * um_per_px, delta=0.2 * um_per_px)
 
     def test_nonsense_on_the_bench_is_said(self):
         for option, value in (("--tilt", "0deg"), ("--tilt", "90"), ("--tilt", "steep"), ("--camera-height", "-1m"),

@@ -45,11 +45,11 @@ TEST(FieldOfFocus, OneFrameTellsSizeAndAxisButNoSign) {
   EXPECT_NEAR(fit->axis_deg, std::atan2(3, 4) * 57.29578, 6);
 }
 
-// 100 series of five: 95 +- 4.4 % (two standard errors) is what they can tell.
+// 50 series of five: 95 +- 6.2 % (two standard errors) is what they can tell.
 TEST(FieldOfFocus, SeriesTellsTheSign) {
   std::mt19937_64 random(52);
   int covered = 0, right = 0;
-  for (int i = 0; i < 100; ++i) {
+  for (int i = 0; i < 50; ++i) {
     const auto frames = travel({-3, 2, -2.5}, 2, random);
     const auto fit = field_of_focus(frames, FocusTravel::near_to_far);
     ASSERT_TRUE(fit);
@@ -57,8 +57,8 @@ TEST(FieldOfFocus, SeriesTellsTheSign) {
     right += fit->x_tilt_px < 0 && fit->y_tilt_px > 0 && fit->curvature_px.value < 0;
     covered += fit->curvature_px.low <= -2.5 && -2.5 <= fit->curvature_px.high;
   }
-  EXPECT_EQ(right, 100);
-  EXPECT_GE(covered, 90);
+  EXPECT_EQ(right, 50);
+  EXPECT_GE(covered, 44);
 }
 
 TEST(FieldOfFocus, TurnsItsSignWithTheTravel) {
