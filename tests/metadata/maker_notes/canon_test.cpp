@@ -91,10 +91,10 @@ TEST(CanonNote, ANoteThatAnEditorMovedIsNotBelieved) {
   // The array of the distances starts with its own length, 44 bytes; moved, it starts with something else.
   std::vector<std::byte> jpeg = with_distances(182, 113).jpeg();
   const std::vector<std::byte> start = {std::byte{44}, std::byte{0}, std::byte{0}, std::byte{0}};
-  const auto at = std::ranges::search(jpeg, start);
-  ASSERT_FALSE(at.empty());
+  const auto at = std::search(jpeg.begin(), jpeg.end(), start.begin(), start.end());
+  ASSERT_NE(at, jpeg.end());
   ASSERT_TRUE(read_capture(jpeg, {5184, 3456}).capture.focus_distance);
-  at.front() = std::byte{99};
+  *at = std::byte{99};
   const CaptureReading reading = read_capture(jpeg, {5184, 3456});
   EXPECT_FALSE(reading.capture.focus_distance);
   EXPECT_TRUE(has_remark(reading, kMakerNoteUnusable));
