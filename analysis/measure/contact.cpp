@@ -22,7 +22,7 @@ constexpr double kParameterCost = 2;           // per free parameter, nats: that
 constexpr double kTileScatter = 0.10, kTileScatterPx = 0.25;   // of c, between regions of one blur (measured)
 constexpr double kMostDeviations = 2;
 constexpr double kMostHolePx = 64;             // or a quarter of the height of the aim
-constexpr double kLeastInliersFoot = 0.85;     // texture that is misread fits worse than this, and misplaces the feet
+constexpr double kLeastInliersFoot = 0.82;     // texture that is misread fits worse than this, and misplaces the feet
 constexpr double kLeastInliersAim = 0.75;
 constexpr double kWidestPx = 12;               // beyond, the surface is read too coarsely to compare a subject with it
 constexpr int kRows = 64;                      // places tried for the foot

@@ -23,7 +23,7 @@ constexpr int kLeastClusters = 12;
 // A surface shows a change of blur: a field that hardly changes explains any frame of one blur. Judgement.
 constexpr double kLeastSpanPx = 2;
 constexpr double kLeastSpan = 0.4;           // of the largest signed blur on it
-constexpr double kRelativeSigma = 0.06;       // of the signed blur: textures that read a little less, all alike
+constexpr double kRelativeSigma = 0.08;       // of the signed blur: textures that read a little less, all alike
 constexpr double kFloorSigmaPx = 0.1;        // no signed blur is known better: tables and tone curve
 
 struct Candidate {
