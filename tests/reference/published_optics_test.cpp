@@ -41,8 +41,8 @@ TEST(PublishedOptics, ConjugateDistancesOfTheNavyManual) {
   }
 }
 
-// US Army correspondence course SS0507: 2 in at f/8 with c = .002 in, 20.8 ft.
-TEST(PublishedOptics, NormalLensOfTheArmyCourse) {
+// US Army publication SS0507: 2 in at f/8 with c = .002 in, 20.8 ft.
+TEST(PublishedOptics, NormalLensOfTheArmyPublication) {
   const double near_mm = depth_limits({2 * kMmPerInch, 8}, kInfinity, .002 * kMmPerInch).near_mm;
   EXPECT_NEAR(near_mm / kMmPerFoot, 20.8, 0.05);
 }
