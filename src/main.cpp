@@ -28,7 +28,7 @@ constexpr const char* kAbout =
     "the pixels, and compares the two.";
 
 constexpr const char* kFooter =
-    "A bare folder runs cull, a bare file check. focusfall COMMAND --help says more.\n\n"
+    "A bare file or folder runs check. focusfall COMMAND --help says more.\n\n"
     "Exit codes: 0 done, 1 some frames could not be done, 2 wrong use, 3 the run could not go on, 130 interrupted.";
 
 bool is_command(const std::string& word) {
@@ -41,7 +41,7 @@ std::string command_names() {
   return names;
 }
 
-// "focusfall FOLDER" means cull and "focusfall FILE" check; what was chosen is said.
+// "focusfall FOLDER" and "focusfall FILE" mean check; what was chosen is said.
 void put_implied_command(std::vector<std::string>& arguments) {
   if (arguments.empty()) throw WrongUse("a command or a photograph is needed; focusfall --help says more");
   if (arguments.front().starts_with('-') || is_command(arguments.front())) return;
@@ -52,13 +52,8 @@ void put_implied_command(std::vector<std::string>& arguments) {
     throw WrongUse(fmt::format("{} is neither a command ({}) nor a file that is there",
                                visible_text(arguments.front()), command_names()));
   }
-  const std::string command = folder && is_command("cull") ? "cull" : "check";
-  if (folder && command != "cull") {
-    say("A bare folder runs cull; this build has no cull yet, so it runs check.");
-  } else {
-    say(fmt::format("{} runs {}.", folder ? "A bare folder" : list ? "A bare list" : "A bare file", command));
-  }
-  arguments.insert(arguments.begin(), command);
+  say(fmt::format("{} runs check.", folder ? "A bare folder" : list ? "A bare list" : "A bare file"));
+  arguments.insert(arguments.begin(), "check");
 }
 
 // A descriptor that was closed before the start must not be given to the first file that is opened.
